@@ -1,0 +1,1 @@
+"""Worksheet functions that solve any line beam exactly."""
