@@ -1,0 +1,654 @@
+"""The worksheet functions: what a cell calls, in every host and from Python, with the arguments that a cell would give.
+
+A range is a list of rows, a blank cell None. A function that cannot answer raises `BeamError`; in an array, an entry
+that cannot be answered is the `BeamError` itself.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from functools import lru_cache
+from typing import TypeAlias
+
+from beamfuncs.beam import Beam
+from beamfuncs.cells import (
+    Argument,
+    Cell,
+    Frozen,
+    as_text,
+    each,
+    flat,
+    frozen,
+    is_range,
+    not_given,
+    number,
+    whole,
+)
+from beamfuncs.documentation import worksheet_function
+from beamfuncs.errors import BeamError, impossible, unreadable
+from beamfuncs.fields import DEFLECTION, MOMENT, SHEAR, SLOPE
+from beamfuncs.loads import Loads
+from beamfuncs.notation import (
+    beam_text,
+    clause_text,
+    is_load_table,
+    read_beam,
+    read_clauses,
+    read_combination,
+    read_line,
+    read_loads,
+)
+from beamfuncs.results import Result, combined, read_phrase
+from beamfuncs.sentences import beam_sentence, loads_sentence
+from beamfuncs.stiffness import Solution, solve
+
+Rows: TypeAlias = list[list[float | BeamError]]
+"""An array result: rows of numbers; an entry that cannot be answered is the error that says why."""
+
+SOLVED = 4096
+"""How many solved beams, and how many of their combinations, are kept."""
+POINTS = 21
+MOST_POINTS = 100_000
+
+# --- reactions ------------------------------------------------------------------------------------
+
+
+@worksheet_function
+def reaction(
+    beam: Argument,
+    loads: Argument,
+    support: Argument,
+    stiffness: Argument = None,
+    combination: Argument = None,
+) -> float:
+    """Return the reaction of one support [force], upward positive.
+
+    Returns
+    -------
+    The vertical force with which the support holds the beam; negative where it holds it down.
+
+    Examples
+    --------
+    >>> reaction("fixed 8 pinned", "udl 12", 1)
+    60.0
+    >>> reaction("pinned 6 roller", "G: udl 5; Q: point 40 at 2", 2, None, "1.35 G + 1.5 Q")
+    40.25
+    """
+    return _result(beam, loads, stiffness, combination).reaction(_whole("support", support))
+
+
+@worksheet_function
+def reaction_moment(
+    beam: Argument,
+    loads: Argument,
+    support: Argument,
+    stiffness: Argument = None,
+    combination: Argument = None,
+) -> float:
+    """Return the reaction moment of one support [force·length], clockwise positive.
+
+    Returns
+    -------
+    The couple with which the support holds the beam's rotation; 0 at a support that does not hold it.
+
+    Examples
+    --------
+    >>> reaction_moment("fixed 8 pinned", "udl 12", 1)
+    -96.0
+    """
+    return _result(beam, loads, stiffness, combination).reaction_moment(_whole("support", support))
+
+
+@worksheet_function
+def reactions(beam: Argument, loads: Argument, stiffness: Argument = None, combination: Argument = None) -> Rows:
+    """Return a row for each support: number, x [length], reaction [force], reaction moment [force·length].
+
+    Returns
+    -------
+    Rows from left to right; reactions upward positive, reaction moments clockwise positive.
+
+    Examples
+    --------
+    >>> reactions("fixed 8 pinned", "udl 12")
+    [[1.0, 0.0, 60.0, -96.0], [2.0, 8.0, 36.0, 0.0]]
+    """
+    result = _result(beam, loads, stiffness, combination)
+    result.check_forces()
+    return [
+        [float(n), result.beam.x[index], result.reactions[index], result.reaction_moments[index]]
+        for n, index in enumerate(result.beam.supports, 1)
+    ]
+
+
+# --- fields at a place ----------------------------------------------------------------------------
+
+
+@worksheet_function
+def shear_at(
+    beam: Argument, loads: Argument, x: Argument, stiffness: Argument = None, combination: Argument = None
+) -> float | Rows:
+    """Return the shear force at a place [force], positive where the resultant to the left of the cut acts upward.
+
+    Returns
+    -------
+    A number, or an array in the shape of a range `x`; at a jump the value to its right, at the right end to its left.
+
+    Examples
+    --------
+    >>> shear_at("fixed 8 pinned", "udl 12", 8)
+    -36.0
+    >>> shear_at("fixed 8 pinned", "udl 12", [[0, 5]])
+    [[60.0, 0.0]]
+    """
+    return _at(SHEAR, beam, loads, x, stiffness, combination)
+
+
+@worksheet_function
+def moment_at(
+    beam: Argument, loads: Argument, x: Argument, stiffness: Argument = None, combination: Argument = None
+) -> float | Rows:
+    """Return the bending moment at a place [force·length], sagging positive.
+
+    Returns
+    -------
+    A number, or an array in the shape of a range `x`; at a jump the value to its right, at the right end to its left.
+
+    Examples
+    --------
+    >>> moment_at("pinned 8 roller", "G: udl 5; Q: point 40 at 2", 4)
+    80.0
+    """
+    return _at(MOMENT, beam, loads, x, stiffness, combination)
+
+
+@worksheet_function
+def slope_at(
+    beam: Argument, loads: Argument, x: Argument, stiffness: Argument = None, combination: Argument = None
+) -> float | Rows:
+    """Return the slope at a place [radian], clockwise positive.
+
+    Returns
+    -------
+    A number, or an array in the shape of a range `x`. At a hinge the value to the right of it; with GA given, the
+    rotation of the cross-section.
+
+    Examples
+    --------
+    >>> slope_at("pinned 6 roller", "udl 12", 0, 27000)
+    0.004
+    """
+    return _at(SLOPE, beam, loads, x, stiffness, combination)
+
+
+@worksheet_function
+def deflection_at(
+    beam: Argument, loads: Argument, x: Argument, stiffness: Argument = None, combination: Argument = None
+) -> float | Rows:
+    """Return the deflection at a place [length], downward positive.
+
+    Returns
+    -------
+    A number, or an array in the shape of a range `x`.
+
+    Examples
+    --------
+    >>> deflection_at("fixed 4 free", "point 9 at 4", 4, 24000)
+    0.008
+    """
+    return _at(DEFLECTION, beam, loads, x, stiffness, combination)
+
+
+# --- extremes -------------------------------------------------------------------------------------
+
+
+@worksheet_function
+def shear_max(
+    beam: Argument,
+    loads: Argument,
+    span: Argument = None,
+    stiffness: Argument = None,
+    combination: Argument = None,
+) -> float:
+    """Return the largest shear force [force], in one span or the whole beam.
+
+    Returns
+    -------
+    The algebraic maximum, both sides of every jump included.
+
+    Examples
+    --------
+    >>> shear_max("fixed 8 pinned", "udl 12")
+    60.0
+    """
+    return _extreme(SHEAR, 1, beam, loads, span, stiffness, combination)
+
+
+@worksheet_function
+def shear_min(
+    beam: Argument,
+    loads: Argument,
+    span: Argument = None,
+    stiffness: Argument = None,
+    combination: Argument = None,
+) -> float:
+    """Return the smallest (most negative) shear force [force], in one span or the whole beam.
+
+    Returns
+    -------
+    The algebraic minimum, both sides of every jump included.
+
+    Examples
+    --------
+    >>> shear_min("fixed 8 pinned", "udl 12")
+    -36.0
+    """
+    return _extreme(SHEAR, -1, beam, loads, span, stiffness, combination)
+
+
+@worksheet_function
+def moment_max(
+    beam: Argument,
+    loads: Argument,
+    span: Argument = None,
+    stiffness: Argument = None,
+    combination: Argument = None,
+) -> float:
+    """Return the largest (sagging) bending moment [force·length], in one span or the whole beam.
+
+    Returns
+    -------
+    The algebraic maximum, found where the shear is zero, at an end or at a jump.
+
+    Examples
+    --------
+    >>> moment_max("fixed 8 pinned", "udl 12")
+    54.0
+    """
+    return _extreme(MOMENT, 1, beam, loads, span, stiffness, combination)
+
+
+@worksheet_function
+def moment_min(
+    beam: Argument,
+    loads: Argument,
+    span: Argument = None,
+    stiffness: Argument = None,
+    combination: Argument = None,
+) -> float:
+    """Return the smallest (hogging) bending moment [force·length], in one span or the whole beam.
+
+    Returns
+    -------
+    The algebraic minimum, found where the shear is zero, at an end or at a jump.
+
+    Examples
+    --------
+    >>> moment_min("fixed 8 pinned", "udl 12")
+    -96.0
+    """
+    return _extreme(MOMENT, -1, beam, loads, span, stiffness, combination)
+
+
+@worksheet_function
+def deflection_max(
+    beam: Argument,
+    loads: Argument,
+    span: Argument = None,
+    stiffness: Argument = None,
+    combination: Argument = None,
+) -> float:
+    """Return the largest downward deflection [length], in one span or the whole beam.
+
+    Returns
+    -------
+    The algebraic maximum, found where the deflected line is level, at an end or at a kink.
+
+    Examples
+    --------
+    >>> deflection_max("pinned 8 roller", "udl 12", None, 32000)
+    0.02
+    """
+    return _extreme(DEFLECTION, 1, beam, loads, span, stiffness, combination)
+
+
+@worksheet_function
+def deflection_min(
+    beam: Argument,
+    loads: Argument,
+    span: Argument = None,
+    stiffness: Argument = None,
+    combination: Argument = None,
+) -> float:
+    """Return the smallest (most upward) deflection [length], in one span or the whole beam.
+
+    Returns
+    -------
+    The algebraic minimum, found where the deflected line is level, at an end or at a kink.
+
+    Examples
+    --------
+    >>> deflection_min("fixed 4 free", "point -9 at 4", None, 24000)
+    -0.008
+    """
+    return _extreme(DEFLECTION, -1, beam, loads, span, stiffness, combination)
+
+
+# --- any result -----------------------------------------------------------------------------------
+
+
+@worksheet_function
+def beam_result(
+    beam: Argument,
+    loads: Argument,
+    phrase: Argument,
+    stiffness: Argument = None,
+    combination: Argument = None,
+) -> float | Rows:
+    """Return the result that a phrase names.
+
+    Parameters
+    ----------
+    phrase
+        What is asked for, or a range of it: 'reaction 2', 'reaction moment 1', 'moment at 3', 'shear at 4 left',
+        'deflection at 1 in span 2', 'moment at support 2', 'moment max in span 2', 'position of moment max',
+        'total load'.
+
+    Returns
+    -------
+    A number, or an array in the shape of a range of phrases. A position counts from the left end of the beam,
+    and is the smallest x where the extreme occurs.
+
+    Examples
+    --------
+    >>> beam_result("fixed 8 pinned", "udl 12", "position of moment max")
+    5.0
+    >>> beam_result("fixed 8 pinned", "udl 12", [["reaction 1"], ["total load"]])
+    [[60.0], [96.0]]
+    """
+    result = _result(beam, loads, stiffness, combination)
+    return _each("phrase", phrase, lambda _, cell: result.answer(read_phrase(cell)))
+
+
+@worksheet_function
+def diagram(
+    beam: Argument,
+    loads: Argument,
+    points: Argument = None,
+    stiffness: Argument = None,
+    combination: Argument = None,
+) -> Rows:
+    """Return a table for a chart, a row a place: x, shear, moment, slope, deflection.
+
+    Parameters
+    ----------
+    points
+        Number of evenly spaced places, both ends included; marks and load ends are added to them. Blank or 0: 21.
+
+    Returns
+    -------
+    Rows from left to right, two at every jump: its left side, then its right. Where no stiffness is given, the slopes
+    and deflections are error values.
+
+    Examples
+    --------
+    >>> for row in diagram("pinned 4 roller", "point 6 at 2", 3, 1000):
+    ...     print(row)
+    [0.0, 3.0, 0.0, 0.006, 0.0]
+    [2.0, 3.0, 6.0, 0.0, 0.008]
+    [2.0, -3.0, 6.0, 0.0, 0.008]
+    [4.0, -3.0, 0.0, -0.006, 0.0]
+    """
+    result = _result(beam, loads, stiffness, combination)
+    cell = frozen("points", points)
+    number_of_points = POINTS if not_given(cell) else _whole("points", points)
+    if not 2 <= number_of_points <= MOST_POINTS:
+        raise impossible(f"points: {number_of_points}; give from 2 to {MOST_POINTS}")
+    rows: Rows = [list(row) for row in result.diagram(number_of_points)]
+    for which in (SLOPE, DEFLECTION):
+        try:
+            result.check(which)
+        except BeamError as error:
+            for row in rows:
+                row[1 + which] = error
+    return rows
+
+
+@worksheet_function
+def contraflexure(beam: Argument, loads: Argument, stiffness: Argument = None, combination: Argument = None) -> Rows:
+    """Return the places where the bending moment changes its sign [length], in one row.
+
+    Returns
+    -------
+    A row of x from left to right; `#N/A` where there is none.
+
+    Examples
+    --------
+    >>> [[x]] = contraflexure("fixed 8 pinned", "udl 12")
+    >>> round(x, 9)
+    2.0
+    """
+    return [[*_result(beam, loads, stiffness, combination).contraflexure()]]
+
+
+# --- text -----------------------------------------------------------------------------------------
+
+
+@worksheet_function
+def beam_line(*part: Argument) -> str:
+    """Return the canonical text of a beam line joined from its parts, numbers being taken as numbers in any locale.
+
+    Parameters
+    ----------
+    part
+        Marks, lengths and pieces of a line, in order; a range is read cell by cell, its blanks skipped.
+
+    Returns
+    -------
+    Text that every function takes as its beam.
+
+    Examples
+    --------
+    >>> beam_line("fix", 6.5, "pin")
+    'fixed 6.5 pinned'
+    """
+    return beam_text(read_line(_joined(part)))
+
+
+@worksheet_function
+def load_line(*part: Argument) -> str:
+    """Return the canonical text of loads joined from their parts, numbers being taken as numbers in any locale.
+
+    Parameters
+    ----------
+    part
+        Words, numbers and pieces of clauses, in order; a range is read cell by cell, its blanks skipped. A load table
+        with its header row is turned into text.
+
+    Returns
+    -------
+    Text that every function takes as its loads.
+
+    Examples
+    --------
+    >>> load_line("G: udl", 5.25, "; Q: point", 40, "at", 3)
+    'G: udl 5.25; Q: point 40 at 3'
+    """
+    table = frozen("part 1", part[0]) if len(part) == 1 else None
+    loads = table if is_load_table(table) else _joined(part)
+    return "; ".join(clause_text(clause) for clause in read_clauses(loads))
+
+
+@worksheet_function
+def beam_reads(beam: Argument, stiffness: Argument = None) -> str:
+    """Return one plain sentence that says what was understood of a beam, to print beside the numbers.
+
+    Returns
+    -------
+    Text: marks with their places and support numbers, spans, stiffness, and how the beam is determinate.
+
+    Examples
+    --------
+    >>> beam_reads("pin 8 roller", 24000)
+    'Beam of length 8: pinned at 0 (support 1), roller at 8 (support 2); span 8; EI = 24000; statically determinate.'
+    """
+    return beam_sentence(read_beam(frozen("beam", beam), frozen("stiffness", stiffness)))
+
+
+@worksheet_function
+def loads_read(beam: Argument, loads: Argument) -> str:
+    """Return one plain sentence that says what was understood of the loads on a beam, to print beside the numbers.
+
+    Returns
+    -------
+    Text: each load with its case, size and place from the left end, and the total force.
+
+    Examples
+    --------
+    >>> loads_read("pinned 6 roller", "G: udl 5; Q: point 40 at 2")
+    '2 loads: G: distributed 5 from x = 0 to 6; Q: point 40 at x = 2; in all 70 downward, each taken once.'
+    """
+    line = read_line(frozen("beam", beam))
+    return loads_sentence(line, read_loads(frozen("loads", loads), line))
+
+
+@worksheet_function
+def fault(beam: Argument, loads: Argument, stiffness: Argument = None, combination: Argument = None) -> str:
+    """Return why a beam cannot be solved, in one line; blank text when all is well.
+
+    Returns
+    -------
+    Text: which argument, what was read, and what would be right.
+
+    Raises
+    ------
+    Nothing: what other functions raise, this one says.
+
+    Examples
+    --------
+    >>> fault("fixed 8 pinned", "udl 12")
+    ''
+    >>> fault("fixed 8 pinned", "udl 12 from 2 to 12")
+    "loads, clause 1: 'from 2 to 12' ends beyond the beam (length 8)"
+    """
+    try:
+        _result(beam, loads, stiffness, combination).check_forces()
+    except BeamError as error:
+        return error.reason
+    return ""
+
+
+@worksheet_function
+def unit_factor(from_unit: Argument, to_unit: Argument) -> float:
+    """Return the number by which a quantity in one unit is multiplied to give it in another.
+
+    Parameters
+    ----------
+    from_unit
+        Unit of the quantity at hand, e.g. 'kN/m', 'kip ft', 'N/mm²'.
+    to_unit
+        Unit wanted, of the same dimension.
+
+    Returns
+    -------
+    The factor.
+
+    Raises
+    ------
+    BeamError
+        `#VALUE!` where a unit is not known or the dimensions differ.
+
+    Notes
+    -----
+    Units and their definitions: the library pint.
+
+    Examples
+    --------
+    >>> unit_factor("kN m", "N mm")
+    1000000.0
+    """
+    from beamfuncs.units import factor
+
+    return factor(frozen("from_unit", from_unit), frozen("to_unit", to_unit))
+
+
+# --- the walk of a cell ---------------------------------------------------------------------------
+
+_HASHED = frozenset({str, float, int, type(None)})
+
+
+def _result(beam: Argument, loads: Argument, stiffness: Argument, combination: Argument) -> Result:
+    """Return the solved beam, from the cache where the same values were solved before."""
+    return _cached(
+        beam if type(beam) in _HASHED else frozen("beam", beam),
+        loads if type(loads) in _HASHED else frozen("loads", loads),
+        stiffness if type(stiffness) in _HASHED else frozen("stiffness", stiffness),
+        combination if type(combination) in _HASHED else frozen("combination", combination),
+    )
+
+
+@lru_cache(SOLVED, typed=True)
+def _cached(beam: Frozen, loads: Frozen, stiffness: Frozen, combination: Frozen) -> Result:
+    line = read_beam(frozen("beam", beam), frozen("stiffness", stiffness))
+    placed = read_loads(frozen("loads", loads), line)
+    factors = placed.factors(read_combination(frozen("combination", combination)))
+    return combined(_solution(line, placed), factors)
+
+
+@lru_cache(SOLVED)
+def _solution(beam: Beam, loads: Loads) -> Solution:
+    return solve(beam, loads)
+
+
+def _at(
+    which: int, beam: Argument, loads: Argument, x: Argument, stiffness: Argument, combination: Argument
+) -> float | Rows:
+    result = _result(beam, loads, stiffness, combination)
+    if type(x) is float:
+        return result.value(which, x)
+    return _each("x", x, lambda where, cell: result.value(which, number(where, cell, "a place"), where))
+
+
+def _extreme(
+    which: int,
+    sign: int,
+    beam: Argument,
+    loads: Argument,
+    span: Argument,
+    stiffness: Argument,
+    combination: Argument,
+) -> float:
+    result = _result(beam, loads, stiffness, combination)
+    number_of_span = None if span is None or not_given(frozen("span", span)) else _whole("span", span)
+    return result.extreme(which, sign, "span", number_of_span)[0]
+
+
+def _each(argument: str, cells: Argument, answer: Callable[[str, Cell], float]) -> float | Rows:
+    """Return the answer for a cell, or for each cell of a range."""
+    if is_range(cells):
+        return each(argument, cells, answer)
+    return answer(argument, _cell(argument, cells))
+
+
+def _whole(argument: str, value: Argument) -> int:
+    return whole(argument, _cell(argument, value))
+
+
+def _cell(argument: str, value: Argument) -> Cell:
+    cell = frozen(argument, value)
+    if isinstance(cell, tuple):
+        raise unreadable(f"{argument}: a range of {len(cell)} by {len(cell[0])} cells; give one cell")
+    return cell
+
+
+def _joined(parts: tuple[Argument, ...]) -> str:
+    words = []
+    for n, part in enumerate(parts, 1):
+        value = frozen(f"part {n}", part)
+        if value is None:
+            raise unreadable(f"part {n}: blank; give a mark, a number or a piece of text")
+        words += [
+            cell if isinstance(cell, str) else as_text(number(f"part {n}", cell))
+            for cell in flat(value)
+            if cell is not None
+        ]
+    return " ".join(words)

@@ -1,0 +1,267 @@
+"""Loads: clauses as they are written, the same placed on a beam, and the combination of their cases."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from functools import cached_property
+from math import isfinite
+from typing import ClassVar, TypeAlias
+
+from beamfuncs.beam import Beam
+from beamfuncs.errors import absent, impossible, unreadable
+
+
+@dataclass(frozen=True)
+class Distributed:
+    """A load [force/length] that varies linearly from `size` at `start` to `end_size` at `end`."""
+
+    start: float
+    end: float
+    size: float
+    end_size: float
+    case: str | None
+    imposed: ClassVar[bool] = False
+
+    @property
+    def total(self) -> float:
+        return (self.size + self.end_size) / 2 * (self.end - self.start)
+
+
+@dataclass(frozen=True)
+class Point:
+    """A force [force] at a place."""
+
+    x: float
+    size: float
+    case: str | None
+    imposed: ClassVar[bool] = False
+
+    @property
+    def total(self) -> float:
+        return self.size
+
+
+@dataclass(frozen=True)
+class Couple:
+    """A clockwise couple [force·length] at a place."""
+
+    x: float
+    size: float
+    case: str | None
+    imposed: ClassVar[bool] = False
+    total: ClassVar[float] = 0.0
+
+
+@dataclass(frozen=True)
+class Settlement:
+    """A support that sinks by `size` [length]."""
+
+    mark: int
+    size: float
+    case: str | None
+    imposed: ClassVar[bool] = True
+    total: ClassVar[float] = 0.0
+
+
+@dataclass(frozen=True)
+class Rotation:
+    """A support that turns clockwise by `size` [radian]."""
+
+    mark: int
+    size: float
+    case: str | None
+    imposed: ClassVar[bool] = True
+    total: ClassVar[float] = 0.0
+
+
+@dataclass(frozen=True)
+class Curvature:
+    """A free curvature `size` [1/length], sagging positive, imposed from `start` to `end`."""
+
+    start: float
+    end: float
+    size: float
+    case: str | None
+    imposed: ClassVar[bool] = True
+    total: ClassVar[float] = 0.0
+
+
+Load: TypeAlias = Distributed | Point | Couple | Settlement | Rotation | Curvature
+"""A load placed on a beam. `imposed` deformations make forces only where the beam is statically indeterminate."""
+
+
+@dataclass(frozen=True)
+class Clause:
+    """One load as it is written, before it is placed on a beam. `where` names it in messages."""
+
+    where: str
+    kind: str
+    size: float
+    end_size: float | None = None
+    start: float | None = None
+    end: float | None = None
+    at: float | None = None
+    span: int | None = None
+    support: int | None = None
+    case: str | None = None
+
+    def __post_init__(self) -> None:
+        kind = LOAD_KINDS[self.kind]
+        example = f"write e.g. '{kind.example}'"
+        given = {name for name in _WRITTEN if getattr(self, name) is not None}
+        for name in _WRITTEN:
+            if name in given and name not in kind.takes:
+                raise unreadable(f"{self.where}: '{self.kind}' takes no {_WRITTEN[name]}; {example}")
+        if "end_size" in kind.takes and self.end_size is None:
+            raise unreadable(f"{self.where}: '{self.kind}' needs a second size after 'to'; {example}")
+        if (self.start is None) != (self.end is None):
+            raise unreadable(f"{self.where}: 'from' and 'to' go together; {example}")
+        if "start" not in kind.takes and len(given & {"at", "support"}) != 1:
+            raise unreadable(f"{self.where}: '{self.kind}' needs one place; {example}")
+        if {"span", "support"} <= given:
+            raise unreadable(f"{self.where}: a support needs no span; {example}")
+        if self.start is not None and self.end is not None and self.end < self.start:
+            raise impossible(f"{self.where}: {self._extent} runs backwards; the first place is the smaller")
+
+    @property
+    def _extent(self) -> str:
+        return f"'from {self.start:.12g} to {self.end:.12g}'"
+
+    def on(self, beam: Beam) -> Load:
+        """Return the load placed on a beam."""
+        return LOAD_KINDS[self.kind].place(self, beam)
+
+    def stretch(self, beam: Beam) -> tuple[float, float]:
+        """Return the two ends of the stretch on which the clause acts."""
+        if self.start is not None and self.end is not None:
+            return self._place(beam, self.start, "starts"), self._place(beam, self.end, "ends")
+        return beam.extent(self.where, self.span)
+
+    def spot(self, beam: Beam) -> float:
+        """Return the place at which the clause acts."""
+        if self.support is not None:
+            return beam.x[beam.support(self.support, self.where)]
+        assert self.at is not None
+        return beam.place(self.at, self.where, self.span)
+
+    def _place(self, beam: Beam, x: float, does: str) -> float:
+        start, end = beam.extent(self.where, self.span)
+        if not -beam.near <= x <= end - start + beam.near:
+            name = "beam" if self.span is None else f"span {self.span}"
+            raise absent(f"{self.where}: {self._extent} {does} beyond the {name} (length {end - start:.12g})")
+        return beam.place(x, self.where, self.span)
+
+
+_WRITTEN = {
+    "end_size": "second size",
+    "start": "'from'",
+    "end": "'to'",
+    "at": "'at' a place",
+    "span": "span",
+    "support": "support",
+}
+"""The parts of a clause that only some kinds of load take, and their names in messages."""
+
+
+def _distributed(clause: Clause, beam: Beam) -> Distributed:
+    start, end = clause.stretch(beam)
+    end_size = clause.size if clause.end_size is None else clause.end_size
+    return Distributed(start, end, clause.size, end_size, clause.case)
+
+
+def _point(clause: Clause, beam: Beam) -> Point:
+    return Point(clause.spot(beam), clause.size, clause.case)
+
+
+def _couple(clause: Clause, beam: Beam) -> Couple:
+    x = clause.spot(beam)
+    mark = beam.mark_at(x)
+    if mark is not None and beam.marks[mark].hinge:
+        raise unreadable(
+            f"{clause.where}: the couple at {x:.12g} stands at a hinge, whose sides turn apart; place it to one side"
+        )
+    return Couple(x, clause.size, clause.case)
+
+
+def _settlement(clause: Clause, beam: Beam) -> Settlement:
+    assert clause.support is not None
+    mark = beam.support(clause.support, clause.where)
+    if beam.marks[mark].kv == 0.0:
+        raise absent(
+            f"{clause.where}: support {clause.support} is {beam.marks[mark].kind} and holds no deflection to settle"
+        )
+    return Settlement(mark, clause.size, clause.case)
+
+
+def _rotation(clause: Clause, beam: Beam) -> Rotation:
+    assert clause.support is not None
+    mark = beam.support(clause.support, clause.where)
+    if beam.marks[mark].kr == 0.0:
+        raise absent(
+            f"{clause.where}: support {clause.support} is {beam.marks[mark].kind} and holds no rotation to turn"
+        )
+    return Rotation(mark, clause.size, clause.case)
+
+
+def _curvature(clause: Clause, beam: Beam) -> Curvature:
+    start, end = clause.stretch(beam)
+    return Curvature(start, end, clause.size, clause.case)
+
+
+STRETCH = frozenset({"start", "end", "span"})
+SPOT = frozenset({"at", "span", "support"})
+SUPPORT = frozenset({"support"})
+
+
+@dataclass(frozen=True)
+class LoadKind:
+    """How a kind of load is placed on a beam, the parts of a clause that it takes, and an example of it."""
+
+    place: Callable[[Clause, Beam], Load]
+    takes: frozenset[str]
+    example: str
+
+
+LOAD_KINDS = {
+    "udl": LoadKind(_distributed, STRETCH, "udl 12 from 2 to 6"),
+    "varying": LoadKind(_distributed, STRETCH | {"end_size"}, "varying 0 to 12 from 2 to 6"),
+    "point": LoadKind(_point, SPOT, "point 40 at 3"),
+    "couple": LoadKind(_couple, SPOT, "couple 15 at 4"),
+    "settle": LoadKind(_settlement, SUPPORT, "settle 0.01 at support 2"),
+    "rotate": LoadKind(_rotation, SUPPORT, "rotate 0.001 at support 1"),
+    "curvature": LoadKind(_curvature, STRETCH, "curvature 1e-4 from 0 to 8"),
+}
+LOAD_ALIASES = {"uniform": "udl"}
+
+Combination: TypeAlias = tuple[tuple[str, float], ...]
+"""Cases in small letters and their factors, each case once."""
+
+
+@dataclass(frozen=True)
+class Loads:
+    """The loads on one beam. A value: equal data, equal object, one hash."""
+
+    loads: tuple[Load, ...]
+
+    def __post_init__(self) -> None:
+        if not isfinite(sum(abs(load.total) for load in self.loads)):
+            raise impossible("loads: add up to more than a number can hold")
+
+    @cached_property
+    def cases(self) -> tuple[str | None, ...]:
+        """The cases that have loads, each once, as they are first written; None for loads without a case."""
+        return tuple(dict.fromkeys(load.case for load in self.loads))
+
+    def factors(self, combination: Combination | None) -> tuple[float, ...]:
+        """Return the factor of each of `cases`: 1 without a combination, 0 for a case that it does not name."""
+        if combination is None:
+            return (1.0,) * len(self.cases)
+        if None in self.cases:
+            number = next(n for n, load in enumerate(self.loads, 1) if load.case is None)
+            raise unreadable(
+                f"loads, load {number}: has no case, but a combination is given; write e.g. 'G: udl 5', or leave the"
+                " combination blank"
+            )
+        named = dict(combination)
+        return tuple(named.get((case or "").casefold(), 0.0) for case in self.cases)

@@ -1,0 +1,194 @@
+"""The result phrase: read, and answered on a solved beam."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Iterator
+from dataclasses import dataclass, field
+from functools import cached_property, lru_cache
+
+from beamfuncs.beam import Beam
+from beamfuncs.cells import Cell, decimal_comma, number, whole
+from beamfuncs.errors import absent, quoted, unreadable
+from beamfuncs.fields import DEFLECTION, FIELDS, LEFT, RIGHT, SLOPE, Fields, fields
+from beamfuncs.loads import Loads
+from beamfuncs.stiffness import Solution
+
+REACTION, REACTION_MOMENT, TOTAL_LOAD = "reaction", "reaction moment", "total load"
+SIGNS = {"max": 1, "min": -1}
+EXAMPLES = (
+    "'reaction 2', 'moment at 3', 'shear at 4 left', 'moment max in span 2', 'position of moment max', 'total load'"
+)
+
+
+@dataclass(frozen=True)
+class Phrase:
+    """What is asked for: a reaction, a field at a place, the extreme of a field or its position, or the total load."""
+
+    quantity: str
+    support: int | None = None
+    x: float | None = None
+    span: int | None = None
+    side: str | None = None
+    sign: int | None = None
+    position: bool = False
+
+
+@dataclass(frozen=True)
+class Result:
+    """A solved beam under one combination of its loads, ready to answer."""
+
+    beam: Beam
+    loads: Loads
+    factors: tuple[float, ...]
+    fields: Fields
+    reactions: list[float]
+    reaction_moments: list[float]
+    total_load: float
+    _extremes: dict[tuple[int, int, int | None], tuple[float, float]] = field(default_factory=dict, compare=False)
+
+    # --- whether the stiffness is known where it counts --------------------------------------------------
+
+    @cached_property
+    def forces_need(self) -> str | None:
+        """What makes the forces depend on the stiffness that is not given, or None."""
+        if self.beam.stiffness or self.beam.redundancy == 0:
+            return None
+        if any(mark.sprung for mark in self.beam.marks):
+            return "springs"
+        if any(mark.kind == "step" for mark in self.beam.marks):
+            return "a step of the stiffness"
+        named = dict(zip(self.loads.cases, self.factors, strict=True))
+        if any(load.imposed and named[load.case] for load in self.loads.loads):
+            return "imposed settlements, rotations or curvatures"
+        return None
+
+    def check_forces(self) -> None:
+        """Raise where the forces depend on a stiffness that is not given."""
+        if self.forces_need:
+            raise unreadable(
+                f"stiffness: blank; the forces depend on it (statically indeterminate, with {self.forces_need}); give EI"
+            )
+
+    def check(self, which: int) -> None:
+        """Raise where a field depends on a stiffness that is not given."""
+        if which in (SLOPE, DEFLECTION) and not self.beam.stiffness:
+            raise unreadable(f"stiffness: blank; {FIELDS[which]} needs it, e.g. EI = 24000")
+        self.check_forces()
+
+    # --- answers ------------------------------------------------------------------------------------------
+
+    def reaction(self, support: int, argument: str = "support") -> float:
+        """Return the reaction of a support, upward positive."""
+        return self._at_support(self.reactions, support, argument)
+
+    def reaction_moment(self, support: int, argument: str = "support") -> float:
+        """Return the reaction moment of a support, clockwise positive."""
+        return self._at_support(self.reaction_moments, support, argument)
+
+    def _at_support(self, values: list[float], support: int, argument: str) -> float:
+        index = self.beam.support(support, argument)
+        self.check_forces()
+        return values[index]
+
+    def value(
+        self, which: int, x: float, argument: str = "x", span: int | None = None, side: str | None = None
+    ) -> float:
+        """Return a field at a place counted from the left end or from the left support of a span."""
+        place = self.beam.place(x, argument, span)
+        if side == LEFT and place <= self.beam.near:
+            raise absent(f"{argument}: x = 0 is the left end; there is no beam to the left of it")
+        if side == RIGHT and place >= self.beam.length - self.beam.near:
+            raise absent(f"{argument}: x = {place:.12g} is the right end; there is no beam to the right of it")
+        self.check(which)
+        return self.fields.value(which, place, side or RIGHT) + 0.0
+
+    def extreme(self, which: int, sign: int, argument: str = "span", span: int | None = None) -> tuple[float, float]:
+        """Return the largest (`sign` 1) or smallest (-1) value of a field in a span or the beam, and its place."""
+        known = self._extremes.get((which, sign, span))
+        if known is None:
+            start, end = self.beam.extent(argument, span)
+            self.check(which)
+            known = self._extremes[which, sign, span] = self.fields.extreme(which, sign, start, end)
+        return known
+
+    def answer(self, phrase: Phrase) -> float:
+        """Return what a phrase asks for."""
+        if phrase.quantity == TOTAL_LOAD:
+            return self.total_load
+        if phrase.quantity == REACTION and phrase.support is not None:
+            return self.reaction(phrase.support, "phrase")
+        if phrase.quantity == REACTION_MOMENT and phrase.support is not None:
+            return self.reaction_moment(phrase.support, "phrase")
+        which = FIELDS.index(phrase.quantity)
+        if phrase.sign is not None:
+            value, place = self.extreme(which, phrase.sign, "phrase", phrase.span)
+            return place if phrase.position else value
+        x = phrase.x
+        if phrase.support is not None:
+            x = self.beam.x[self.beam.support(phrase.support, "phrase")]
+        assert x is not None
+        return self.value(which, x, "phrase", phrase.span, phrase.side)
+
+    def contraflexure(self) -> list[float]:
+        """Return the places where the moment changes sign."""
+        self.check_forces()
+        places = self.fields.contraflexure()
+        if not places:
+            raise absent("contraflexure: the moment does not change its sign anywhere along the beam")
+        return places
+
+    def diagram(self, points: int) -> Iterator[list[float]]:
+        """Yield rows of x and every field, at evenly spaced places and on both sides of every jump."""
+        self.check_forces()
+        for x, side in self.fields.stations(points):
+            yield [x, *(self.fields.value(which, x, side) + 0.0 for which in range(len(FIELDS)))]
+
+
+def combined(solution: Solution, factors: tuple[float, ...]) -> Result:
+    """Return the result of a linear combination of the columns of a solution."""
+    ends, reactions, reaction_moments, total = solution.combined(factors)
+    along = fields(solution, ends, factors)
+    return Result(solution.beam, solution.loads, factors, along, reactions, reaction_moments, total)
+
+
+_REACTION = re.compile(rf"({REACTION_MOMENT}|{REACTION})\s+(\S+)")
+_EXTREME = re.compile(rf"(position\s+of\s+)?({'|'.join(FIELDS)})\s+({'|'.join(SIGNS)})(?:\s+in\s+span\s+(\S+))?")
+_PLACE = re.compile(
+    rf"({'|'.join(FIELDS)})\s+at\s+(?:support\s+(?P<support>\S+)|(?P<x>\S+?)(?:\s+in\s+span\s+(?P<span>\S+))?)"
+    rf"(?:\s+(?P<side>{LEFT}|{RIGHT}))?"
+)
+
+
+@lru_cache(1024)
+def read_phrase(cell: Cell) -> Phrase:
+    """Return what a phrase asks for.
+
+    >>> read_phrase("Moment max in span 2").sign
+    1
+    """
+    if cell is None:
+        raise unreadable(f"phrase: blank; write e.g. {EXAMPLES}")
+    if not isinstance(cell, str):
+        raise unreadable(f"phrase: the number {cell:g}; write e.g. {EXAMPLES}")
+    text = " ".join(cell.lower().split())
+    if text == TOTAL_LOAD:
+        return Phrase(TOTAL_LOAD)
+    if found := _REACTION.fullmatch(text):
+        return Phrase(found[1], support=whole("phrase, support", found[2], "a support number"))
+    if found := _EXTREME.fullmatch(text):
+        span = whole("phrase, span", found[4], "a span number") if found[4] else None
+        return Phrase(found[2], span=span, sign=SIGNS[found[3]], position=bool(found[1]))
+    if found := _PLACE.fullmatch(text):
+        support, x, span_text = found["support"], found["x"], found["span"]
+        return Phrase(
+            found[1],
+            support=whole("phrase, support", support, "a support number") if support else None,
+            x=number("phrase, place", x, "a place") if x else None,
+            span=whole("phrase, span", span_text, "a span number") if span_text else None,
+            side=found["side"],
+        )
+    comma = re.search(r"\S*\d,\d\S*", text)
+    if comma:
+        raise decimal_comma("phrase", comma[0])
+    raise unreadable(f"phrase: {quoted(text, 40)} is not understood; write e.g. {EXAMPLES}")
