@@ -6,10 +6,11 @@ import re
 from collections.abc import Iterator
 from dataclasses import dataclass, field
 from functools import cached_property, lru_cache
+from math import isfinite
 
 from beamfuncs.beam import Beam
 from beamfuncs.cells import Cell, decimal_comma, number, whole
-from beamfuncs.errors import absent, quoted, unreadable
+from beamfuncs.errors import absent, impossible, quoted, unreadable
 from beamfuncs.fields import DEFLECTION, FIELDS, LEFT, RIGHT, SLOPE, Fields, fields
 from beamfuncs.loads import Loads
 from beamfuncs.stiffness import Solution
@@ -67,7 +68,7 @@ class Result:
         """Raise where the forces depend on a stiffness that is not given."""
         if self.forces_need:
             raise unreadable(
-                f"stiffness: blank; the forces depend on it (statically indeterminate, with {self.forces_need}); give EI"
+                f"stiffness: blank; the forces depend on it (statically indeterminate, {self.forces_need}); give EI"
             )
 
     def check(self, which: int) -> None:
@@ -101,7 +102,7 @@ class Result:
         if side == RIGHT and place >= self.beam.length - self.beam.near:
             raise absent(f"{argument}: x = {place:.12g} is the right end; there is no beam to the right of it")
         self.check(which)
-        return self.fields.value(which, place, side or RIGHT) + 0.0
+        return _finite(self.fields.value(which, place, side or RIGHT))
 
     def extreme(self, which: int, sign: int, argument: str = "span", span: int | None = None) -> tuple[float, float]:
         """Return the largest (`sign` 1) or smallest (-1) value of a field in a span or the beam, and its place."""
@@ -109,7 +110,8 @@ class Result:
         if known is None:
             start, end = self.beam.extent(argument, span)
             self.check(which)
-            known = self._extremes[which, sign, span] = self.fields.extreme(which, sign, start, end)
+            value, place = self.fields.extreme(which, sign, start, end)
+            known = self._extremes[which, sign, span] = (_finite(value), place)
         return known
 
     def answer(self, phrase: Phrase) -> float:
@@ -142,14 +144,23 @@ class Result:
         """Yield rows of x and every field, at evenly spaced places and on both sides of every jump."""
         self.check_forces()
         for x, side in self.fields.stations(points):
-            yield [x, *(self.fields.value(which, x, side) + 0.0 for which in range(len(FIELDS)))]
+            yield [x, *(_finite(self.fields.value(which, x, side)) for which in range(len(FIELDS)))]
 
 
 def combined(solution: Solution, factors: tuple[float, ...]) -> Result:
     """Return the result of a linear combination of the columns of a solution."""
     ends, reactions, reaction_moments, total = solution.combined(factors)
+    for value in (*reactions, *reaction_moments, total):
+        _finite(value)
     along = fields(solution, ends, factors)
     return Result(solution.beam, solution.loads, factors, along, reactions, reaction_moments, total)
+
+
+def _finite(value: float) -> float:
+    """Return a result, -0.0 made 0.0; raise where it is larger than a number can hold."""
+    if not isfinite(value):
+        raise impossible("loads: so large that a result is more than a number can hold; check the units")
+    return value + 0.0
 
 
 _REACTION = re.compile(rf"({REACTION_MOMENT}|{REACTION})\s+(\S+)")

@@ -350,7 +350,7 @@ class _System:
         for freedom in self.held:
             u[freedom] = base[freedom]
         couples: list[tuple[float, float]] = []
-        largest = 0.0
+        largest, largest_motion = 0.0, _largest(u)
         for element, tau, moment, total in zip(self.elements, case.tau, case.moment, case.total, strict=True):
             support = moment / element.length
             applied[element.wi] += support
@@ -359,6 +359,7 @@ class _System:
             mi, mj = element.couples(u)
             couples.append((mi - element.near * i - element.far * j, mj - element.far * i - element.near * j))
             largest = max(largest, abs(couples[-1][0]), abs(couples[-1][1]), abs(moment / self.unit_length))
+            largest_motion = max(largest_motion, abs(i), abs(j))
         for _ in range(MOST_CORRECTIONS):
             du = self._correction(applied, u, couples, factor)
             correction = 0.0
@@ -369,7 +370,8 @@ class _System:
                 correction = max(correction, abs(di), abs(dj))
                 largest = max(largest, abs(mi + di), abs(mj + dj))
             u = [a + b for a, b in zip(u, du, strict=True)]
-            if correction <= SETTLED * largest and _largest(du) <= SETTLED * _largest(u):
+            largest_motion = max(largest_motion, _largest(u))
+            if correction <= SETTLED * largest and _largest(du) <= SETTLED * largest_motion:
                 noise = NOISE * largest
                 return u, [(i if abs(i) > noise else 0.0, j if abs(j) > noise else 0.0) for i, j in couples]
         raise _too_unlike()

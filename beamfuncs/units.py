@@ -7,33 +7,30 @@ from functools import lru_cache
 from typing import Any
 
 from beamfuncs.cells import Frozen
-from beamfuncs.errors import quoted, unreadable
+from beamfuncs.errors import BeamError, quoted, unreadable
 
-LONGEST = 40
 TRADE_UNITS = {
-    "kNm": "kN * m",
-    "MNm": "MN * m",
-    "Nm": "N * m",
-    "Nmm": "N * mm",
-    "kNmm": "kN * mm",
-    "kNcm": "kN * cm",
-    "kipft": "kip * ft",
-    "kipin": "kip * in",
-    "lbft": "lbf * ft",
-    "lbin": "lbf * in",
+    "Nm": "N m",
+    "Nmm": "N mm",
+    "kNm": "kN m",
+    "kNmm": "kN mm",
+    "kNcm": "kN cm",
+    "MNm": "MN m",
+    "kipft": "kip ft",
+    "kipin": "kip in",
+    "lbft": "lbf ft",
+    "lbin": "lbf in",
     "k": "kip",
-    "klf": "kip / ft",
-    "plf": "lbf / ft",
-    "psf": "lbf / ft ** 2",
-    "ksf": "kip / ft ** 2",
-    "tonf": "tonne * g_0",
+    "klf": "kip/ft",
+    "plf": "lbf/ft",
+    "ksf": "kip/ft2",
+    "psf": "lbf/ft2",
 }
 """Spellings of the trade that the unit library does not know, or takes for something else."""
 
-_WORD = re.compile(
-    r"\s*(?:(?P<unit>[A-Za-zµ°]+)(?:\s*(?:\^|\*\*)?\s*(?P<power>-?[0-9]|[²³⁴]))?|(?P<sign>[*·×/()]|1(?![0-9])))"
-)
-_SUPERSCRIPTS = {"²": "2", "³": "3", "⁴": "4"}
+LONGEST = 40
+_FACTOR = re.compile(r"\s*([*·×/]?)\s*(?:(1)(?![0-9])|([A-Za-zµ°]+)\s*(?:(?:\^|\*\*)?\s*(-?[0-9]|[²³⁴])(?![0-9]))?)\s*")
+_SUPERSCRIPTS = str.maketrans("²³⁴", "234")
 
 
 def factor(from_unit: Frozen, to_unit: Frozen) -> float:
@@ -45,61 +42,50 @@ def factor(from_unit: Frozen, to_unit: Frozen) -> float:
     source, target = _unit("from_unit", from_unit), _unit("to_unit", to_unit)
     if source.dimensionality != target.dimensionality:
         raise unreadable(
-            f"to_unit: {quoted(to_unit)} is {target.dimensionality}, but {quoted(from_unit)} is {source.dimensionality}"
+            f"to_unit: {quoted(to_unit, 20)} is {target.dimensionality},"
+            f" but {quoted(from_unit, 20)} is {source.dimensionality}"
         )
+    if _registry().convert(0.0, source, target) != 0.0:
+        raise unreadable(f"from_unit: {quoted(from_unit)} and {quoted(to_unit)} count from different zeros")
     return float(_registry().convert(1.0, source, target))
 
 
-def _unit(argument: str, unit: Frozen) -> Any:
-    """Return the unit that a text names: names, powers, products and quotients, nothing else."""
+def _unit(argument: str, text: Frozen) -> Any:
+    """Return the unit that a text names: units with powers, joined by blanks, points or strokes, and nothing else."""
+    if not isinstance(text, str) or len(text) > LONGEST:
+        raise unreadable(f"{argument}: {quoted(text)}; write a unit such as 'kN/m', in up to {LONGEST} characters")
+    unit = _registry().Unit("")
+    position = 0
+    while position < len(text):
+        found = _FACTOR.match(text, position)
+        if found is None or (position == 0 and found[1]):
+            raise _unknown(argument, text, text[position:])
+        operator, _, name, power = found.groups()
+        if name:
+            part = _named(argument, text, name, int((power or "1").translate(_SUPERSCRIPTS)))
+            unit = unit / part if operator == "/" else unit * part
+        position = found.end()
+    return unit
+
+
+def _named(argument: str, text: str, name: str, power: int) -> Any:
     from pint.errors import PintError
 
-    if not isinstance(unit, str):
-        raise unreadable(f"{argument}: {quoted(unit)}; write a unit such as 'kN/m'")
-    expression = _expression(argument, unit)
+    if name in TRADE_UNITS:
+        # 'kNm2' is kN·m², as it is written on paper: there the power belongs to the last unit.
+        *first, last = TRADE_UNITS[name].split()
+        unit = _unit(argument, last) ** power
+        return _unit(argument, first[0]) * unit if first else unit
     try:
-        parsed = _registry().parse_units(expression)
-    except (PintError, ValueError, TypeError, AttributeError, SyntaxError):
-        raise unreadable(
-            f"{argument}: {quoted(unit)} is not a unit that is known; write e.g. 'kN/m', 'kip ft', 'N/mm²'"
-        ) from None
-    if (
-        not _registry()._units_are_multiplicative(parsed)
-        if hasattr(_registry(), "_units_are_multiplicative")
-        else False
-    ):
-        raise unreadable(f"{argument}: {quoted(unit)} has a zero of its own and no factor")
-    return parsed
+        return _registry().Unit(name) ** power
+    except (PintError, ValueError):
+        raise _unknown(argument, text, name) from None
 
 
-def _expression(argument: str, unit: str) -> str:
-    words = []
-    position = 0
-    text = unit.strip()
-    if len(text) > LONGEST:
-        raise unreadable(f"{argument}: {quoted(unit)} is longer than {LONGEST} characters")
-    while position < len(text):
-        found = _WORD.match(text, position)
-        if found is None:
-            raise unreadable(
-                f"{argument}: {quoted(unit)} is not understood at {quoted(text[position:], 10)}; write e.g. 'kN/m'"
-            )
-        position = found.end()
-        if found["sign"]:
-            words.append("*" if found["sign"] in "·×" else found["sign"])
-            continue
-        if words and words[-1] not in ("*", "/", "("):
-            words.append("*")
-        name = TRADE_UNITS.get(found["unit"], found["unit"])
-        power = found["power"]
-        if power and found["unit"] in TRADE_UNITS:
-            # 'kNm2' is kN·m², as it is written on paper: the power belongs to the last factor.
-            words.append(f"({name} ** {_SUPERSCRIPTS.get(power, power)})")
-        elif power:
-            words.append(f"{name} ** {_SUPERSCRIPTS.get(power, power)}")
-        else:
-            words.append(f"({name})")
-    return " ".join(words)
+def _unknown(argument: str, text: str, part: str) -> BeamError:
+    return unreadable(
+        f"{argument}: {quoted(part, 20)} in {quoted(text)} is no unit that is known; write e.g. 'kN/m', 'kip ft', 'N/mm²'"
+    )
 
 
 @lru_cache(1)

@@ -1,0 +1,200 @@
+"""The command line: `beamfuncs fill` a workbook, `beamfuncs list` the functions.
+
+Exit status: 0 done; 1 done, but some cell has an error; 2 nothing done. What only one command needs
+is imported by that command, so that `--help` answers at once.
+"""
+
+from __future__ import annotations
+
+import json
+import sys
+import time
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from dataclasses import asdict
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated, NoReturn
+
+import typer
+
+if TYPE_CHECKING:
+    from beamfuncs.catalogue import Entry
+    from beamfuncs.hosts.headless import Report
+
+DONE, DONE_WITH_ERRORS, NOTHING_DONE = 0, 1, 2
+LISTED = 50
+"""How many errors are printed; `--json` gives them all."""
+PATIENCE = 1.0
+"""Seconds before a progress bar appears."""
+PIPE_WIDTH = 140
+
+app = typer.Typer(
+    name="beamfuncs",
+    help="Worksheet functions that solve any line beam exactly, live in the workbook.",
+    no_args_is_help=True,
+    add_completion=False,
+)
+
+Json = Annotated[bool, typer.Option("--json", help="Print JSON for a script.")]
+
+
+def main() -> None:
+    """Run the command line."""
+    app()
+
+
+def _print_version(wanted: bool) -> None:
+    if wanted:
+        from importlib.metadata import version
+
+        print(f"beamfuncs {version('beamfuncs')}")
+        raise typer.Exit(DONE)
+
+
+@app.callback()
+def _options(
+    version: Annotated[
+        bool,
+        typer.Option("--version", help="Print the version.", callback=_print_version, is_eager=True),
+    ] = False,
+) -> None:
+    pass
+
+
+@app.command()
+def fill(
+    book: Annotated[Path, typer.Argument(metavar="BOOK.xlsx", help="The workbook; it is only read.")],
+    out: Annotated[
+        Path | None,
+        typer.Option("-o", "--out", metavar="OUT.xlsx", help="Default: BOOK.filled.xlsx beside the workbook."),
+    ] = None,
+    as_json: Json = False,
+) -> None:
+    """Compute a workbook's formulas and store the values beside them in a copy.
+
+    Exit status: 0 done; 1 done, but some cell has an error; 2 nothing done.
+    """
+    from beamfuncs.hosts import headless
+
+    try:
+        with _progress_bar() as progress:
+            report = headless.fill(book, out, progress=progress)
+    except headless.NotFilled as error:
+        _give_up(str(error))
+    except KeyboardInterrupt:
+        _give_up("interrupted: nothing was written")
+    if as_json:
+        print(json.dumps(asdict(report) | {"target": str(report.target)}, indent=2, ensure_ascii=False))
+    else:
+        _summarise(report)
+    raise typer.Exit(DONE_WITH_ERRORS if report.errors else DONE)
+
+
+@app.command(name="list")
+def list_functions(
+    name: Annotated[str | None, typer.Argument(metavar="[NAME]", help="Print all about this function.")] = None,
+    as_json: Json = False,
+) -> None:
+    """Print the functions in a table, or all about one of them."""
+    from beamfuncs.catalogue import catalogue
+
+    entries = catalogue()
+    if name is None:
+        if as_json:
+            print(json.dumps([_as_data(entry) for entry in entries.values()], indent=2, ensure_ascii=False))
+        else:
+            _print_table(list(entries.values()))
+        return
+    entry = entries.get(name.casefold())
+    if entry is None:
+        _give_up(f"no function is called {name}{_near_matches(name.casefold(), list(entries))}")
+    elif as_json:
+        print(json.dumps(_as_data(entry), indent=2, ensure_ascii=False))
+    else:
+        print(f"{entry.call}\n\n{entry.documentation}")
+
+
+def _give_up(reason: str) -> NoReturn:
+    print(f"beamfuncs: {' '.join(reason.split())}", file=sys.stderr)
+    raise typer.Exit(NOTHING_DONE)
+
+
+def _summarise(report: Report) -> None:
+    from rich.console import Console
+    from rich.text import Text
+
+    console = Console(highlight=False, soft_wrap=True)
+    cells = "cell" if len(report.errors) == 1 else "cells"
+    errors = f"{len(report.errors)} {cells} in error" if report.errors else "no errors"
+    console.print(
+        Text.assemble(
+            (str(report.target), "bold"),
+            f": {report.beam_cells} beam cells filled, {report.recomputed} cells recomputed, ",
+            (errors, "red" if report.errors else "green"),
+        )
+    )
+    for fault in report.errors[:LISTED]:
+        console.print(Text.assemble(f"  {fault.sheet}!{fault.cell}  ", (fault.value, "red"), f"  {fault.reason}"))
+    if len(report.errors) > LISTED:
+        console.print(f"  and {len(report.errors) - LISTED} more, which --json lists")
+
+
+def _print_table(entries: list[Entry]) -> None:
+    from rich.box import SIMPLE_HEAD
+    from rich.console import Console
+    from rich.table import Table
+    from rich.text import Text
+
+    table = Table("function", "arguments", "returns", box=SIMPLE_HEAD)
+    for entry in entries:
+        arguments = entry.call.partition("(")[2].removesuffix(")")
+        table.add_row(entry.name, Text(arguments), Text(entry.summary.removeprefix("Return ")))
+    width = None if sys.stdout.isatty() else PIPE_WIDTH
+    Console(highlight=False, width=width).print(table)
+
+
+def _as_data(entry: Entry) -> dict[str, object]:
+    return {
+        "name": entry.name,
+        "call": entry.call,
+        "arguments": [asdict(argument) for argument in entry.arguments],
+        "returns": entry.returns,
+        "summary": entry.summary,
+        "documentation": entry.documentation,
+    }
+
+
+def _near_matches(name: str, names: list[str]) -> str:
+    from difflib import get_close_matches
+
+    near = get_close_matches(name, names)
+    return f"; near it: {', '.join(near)}" if near else "; `beamfuncs list` prints them all"
+
+
+@contextmanager
+def _progress_bar() -> Iterator[Callable[[int, int], None]]:
+    """Give a function to report progress to; it shows a bar on a terminal, once the work takes long."""
+    if not sys.stderr.isatty():
+        yield lambda done, of: None
+        return
+    from rich.console import Console
+    from rich.progress import BarColumn, MofNCompleteColumn, Progress, TimeRemainingColumn
+
+    columns = "beam cells", BarColumn(), MofNCompleteColumn(), TimeRemainingColumn()
+    bar = Progress(*columns, console=Console(stderr=True), transient=True)
+    task = bar.add_task("beam cells")
+    began = time.monotonic()
+
+    def progress(done: int, of: int) -> None:
+        bar.update(task, completed=done, total=of)
+        if not bar.live.is_started and time.monotonic() - began > PATIENCE:
+            bar.start()
+
+    try:
+        yield progress
+    finally:
+        bar.stop()
+
+
+if __name__ == "__main__":
+    main()
