@@ -1,0 +1,67 @@
+"""The catalogue is derived from the functions, and what hosts need of it holds."""
+
+from __future__ import annotations
+
+import keyword
+
+import pytest
+
+from beamfuncs import functions
+from beamfuncs.catalogue import RETURNS, catalogue
+from beamfuncs.documentation import PARAMETERS, sections
+
+NAMES = list(catalogue())
+
+
+def test_every_public_function_of_the_module_is_in_the_catalogue() -> None:
+    """A function that is written is a function that every host has."""
+    written = {
+        name
+        for name, value in vars(functions).items()
+        if callable(value) and getattr(value, "__module__", "") == functions.__name__ and not name.startswith("_")
+    }
+    assert written == set(NAMES)
+
+
+@pytest.mark.parametrize("name", NAMES)
+def test_docstrings_are_contracts(name: str) -> None:
+    """One line that says what is returned; every argument; returns, errors, an example that runs."""
+    entry = catalogue()[name]
+    told = sections(entry.documentation)
+    assert entry.summary.startswith("Return ")
+    assert entry.summary.endswith(".")
+    assert {"Parameters", "Returns", "Raises", "Examples"} <= set(told)
+    assert f">>> {name}(" in told["Examples"] or f"{name}(" in told["Examples"]
+    assert entry.returns in RETURNS.values()
+    if {"beam", "loads"} <= {a.name for a in entry.arguments} and entry.returns != "text":
+        assert "direct stiffness method" in told["Notes"]
+
+
+@pytest.mark.parametrize("name", NAMES)
+def test_hosts_can_show_every_function(name: str) -> None:
+    """Help fits the 255 characters of a host; names are plain and no keyword; optional arguments come last."""
+    entry = catalogue()[name]
+    assert len(entry.summary) <= 255
+    for argument in entry.arguments:
+        assert 0 < len(argument.help) <= 255
+        assert argument.name.isidentifier()
+        assert argument.name.islower()
+        assert not keyword.iskeyword(argument.name)
+    optional = [argument.optional for argument in entry.arguments]
+    assert optional == sorted(optional)
+
+
+def test_shared_arguments_are_described_once() -> None:
+    """No function writes again what the shared descriptions say."""
+    for entry in catalogue().values():
+        for argument in entry.arguments:
+            if argument.name in PARAMETERS:
+                assert argument.help == PARAMETERS[argument.name]
+
+
+def test_arguments_stand_in_one_order_everywhere() -> None:
+    """Beam, loads, what is asked, stiffness, combination."""
+    order = ["beam", "loads", "support", "x", "span", "phrase", "points", "stiffness", "combination"]
+    for entry in catalogue().values():
+        known = [a.name for a in entry.arguments if a.name in order]
+        assert known == sorted(known, key=order.index)
