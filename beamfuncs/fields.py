@@ -27,13 +27,14 @@ Polynomial: TypeAlias = tuple[float, ...]
 
 @dataclass(frozen=True)
 class Stretch:
-    """The fields between two neighbouring breaks as polynomials in the distance `s` from its left end `x`.
+    """The fields between two neighbouring breaks, `x` and `end`, as polynomials in the distance `s` from `x`.
 
     `polynomials` and `ends` hold one entry for each of `FIELDS`; `ends` are the values at the right end, known from the
     solve, so that a moment that is zero there is zero and no rounding of a polynomial.
     """
 
     x: float
+    end: float
     length: float
     polynomials: tuple[Polynomial, Polynomial, Polynomial, Polynomial]
     ends: tuple[float, ...]
@@ -83,13 +84,15 @@ class Fields:
     def within(self, start: float, end: float) -> tuple[Stretch, ...]:
         """Return the stretches from one mark to another."""
         near = self.beam.near
-        return tuple(p for p in self.stretches if p.x >= start - near and p.x + p.length <= end + near)
+        return tuple(p for p in self.stretches if p.x >= start - near and p.end <= end + near)
 
     def extreme(self, which: int, sign: int, start: float, end: float) -> tuple[float, float]:
         """Return the largest (`sign` 1) or smallest (-1) value of a field between two marks, and its first place."""
-        candidates = [
-            (p.x + s, p.value(which, s)) for p in self.within(start, end) for s in (0.0, *p.stationary(which), p.length)
-        ]
+        candidates = []
+        for p in self.within(start, end):
+            candidates.append((p.x, p.value(which, 0.0)))
+            candidates += [(p.x + s, p.value(which, s)) for s in p.stationary(which)]
+            candidates.append((p.end, p.value(which, p.length)))
         best = max(sign * value for _, value in candidates)
         equal = TIE * max(abs(value) for _, value in candidates)
         place = next(x for x, value in candidates if sign * value >= best - equal)
@@ -107,7 +110,7 @@ class Fields:
                 if sign:
                     if sign == -last_sign:
                         places.append(last_end)
-                    last_sign, last_end = sign, p.x + b
+                    last_sign, last_end = sign, p.end if b == p.length else p.x + b
         return places
 
     def stations(self, number: int) -> Iterator[tuple[float, str]]:
@@ -163,7 +166,8 @@ def _element(
         polynomials = _polynomials((V, M, phi, v), q, (q_end - q) / h, kappa, EI, GA)
         inside = b < length
         ends = tuple(evaluate(p, h) for p in polynomials) if inside else tuple(states[4:])
-        stretches.append(Stretch(beam.x[e] + a, h, polynomials, ends))
+        x, end = beam.x[e] + a, beam.x[e] + b if inside else beam.x[e + 1]
+        stretches.append(Stretch(x, end, h, polynomials, ends))
         if inside:
             V, M, phi, v = ends
             jumping = set()

@@ -84,7 +84,7 @@ def _named(argument: str, text: str, name: str, power: int) -> Any:
 
 def _unknown(argument: str, text: str, part: str) -> BeamError:
     return unreadable(
-        f"{argument}: {quoted(part, 20)} in {quoted(text)} is no unit that is known; write e.g. 'kN/m', 'kip ft', 'N/mm²'"
+        f"{argument}: {quoted(part, 20)} in {quoted(text)} is no known unit; write e.g. 'kN/m', 'kip ft', 'N/mm²'"
     )
 
 

@@ -130,7 +130,10 @@ def test_an_unloaded_beam_is_udl_0() -> None:
 
 def test_zero_ends_are_zero() -> None:
     """Moments at free and pinned ends, and deflections at supports, are zero and no rounding of it."""
-    beam, loads = "pinned 3.1 pinned 4.7 pinned 1.3 free", "udl 12.3; point 7.7 at 1.9; varying 1.1 to 3.3 from 2 to 6.6"
+    beam, loads = (
+        "pinned 3.1 pinned 4.7 pinned 1.3 free",
+        "udl 12.3; point 7.7 at 1.9; varying 1.1 to 3.3 from 2 to 6.6",
+    )
     assert f.moment_at(beam, loads, 0, 1e4) == 0.0
     assert f.moment_at(beam, loads, 9.1, 1e4) == 0.0
     assert f.shear_at(beam, loads, 9.1, 1e4) == 0.0
