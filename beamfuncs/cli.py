@@ -124,19 +124,17 @@ def _summarise(report: Report) -> None:
     from rich.text import Text
 
     console = Console(highlight=False, soft_wrap=True)
-    cells = "cell" if len(report.errors) == 1 else "cells"
-    errors = f"{len(report.errors)} {cells} in error" if report.errors else "no errors"
-    console.print(
-        Text.assemble(
-            (str(report.target), "bold"),
-            f": {report.beam_cells} beam cells filled, {report.recomputed} cells recomputed, ",
-            (errors, "red" if report.errors else "green"),
-        )
-    )
+    done = f"{_count(report.beam_cells, 'beam cell')} filled, {_count(report.recomputed, 'other cell')} recomputed"
+    errors = (f"{_count(len(report.errors), 'cell')} in error", "red") if report.errors else ("no errors", "green")
+    console.print(Text.assemble((str(report.target), "bold"), f": {done}, ", errors))
     for fault in report.errors[:LISTED]:
         console.print(Text.assemble(f"  {fault.sheet}!{fault.cell}  ", (fault.value, "red"), f"  {fault.reason}"))
     if len(report.errors) > LISTED:
         console.print(f"  and {len(report.errors) - LISTED} more, which --json lists")
+
+
+def _count(number: int, what: str) -> str:
+    return f"{number} {what}" if number == 1 else f"{number} {what}s"
 
 
 def _print_table(entries: list[Entry]) -> None:

@@ -191,9 +191,7 @@ def test_deflections_follow_by_integrating_the_moment(schedule: Schedule, mark: 
 
 
 @pytest.mark.parametrize("mark", FORMS)
-def test_every_beam_is_in_equilibrium(
-    schedule: Schedule, filled: tuple[Report, Workbook], mark: str
-) -> None:
+def test_every_beam_is_in_equilibrium(schedule: Schedule, filled: tuple[Report, Workbook], mark: str) -> None:
     """Reactions balance the loads, upward and in moment about the left end, and the sheet says so."""
     row = schedule.inputs(mark)
     load = loading(mark, row, *CHARACTERISTIC)
@@ -248,9 +246,7 @@ def test_the_beam_in_depth_is_in_equilibrium(filled: tuple[Report, Workbook]) ->
     rows = [row for row in values(sheet, "K", 13) if isinstance(row[0], (int, float))]
     supports = [(row[1], row[2]) for row in rows]
     w, q, P, tip, C = 1.35 * 3.2, 1.5 * 6.5, 1.5 * 45, 1.5 * 12, 1.35 * 10
-    assert sum(R for _, R in supports) == pytest.approx(
-        w * 18.6 + q * 6 + 1.5 * 9 * 5.4 / 2 + P + tip, rel=CLOSE
-    )
+    assert sum(R for _, R in supports) == pytest.approx(w * 18.6 + q * 6 + 1.5 * 9 * 5.4 / 2 + P + tip, rel=CLOSE)
 
     def moment(x: float) -> float:
         def over(start: float) -> float:
@@ -295,13 +291,10 @@ def test_totals_by_support_mark_are_the_sums_of_the_reactions(
     assert pads["All"][2:4] == pytest.approx(everything, rel=CLOSE)
 
 
-def test_nothing_is_lost_between_loads_and_pads(
-    schedule: Schedule, filled: tuple[Report, Workbook]
-) -> None:
+def test_nothing_is_lost_between_loads_and_pads(schedule: Schedule, filled: tuple[Report, Workbook]) -> None:
     """The proof on the sheet compares the pads with the loads of the inputs, and the difference is 0."""
     applied = [
-        sum(loading(mark, schedule.inputs(mark), *case).total for mark in FORMS)
-        for case in ((1.0, 0.0), (0.0, 1.0))
+        sum(loading(mark, schedule.inputs(mark), *case).total for mark in FORMS) for case in ((1.0, 0.0), (0.0, 1.0))
     ]
     applied[0] += 3.2 * 18.6
     applied[1] += 6.5 * 6 + 9 * 5.4 / 2 + 45 + 12
@@ -342,9 +335,7 @@ def test_a_changed_span_changes_its_beam_and_the_pads_below(
     after = {each[0]: each[4] for each in values(book["Foundations"], "K", 7)}
     grown = {pad: after[pad] - before[pad] for pad in before}
     more = (2.1 + 4.0) * (6.5 - 5.4)
-    assert grown == pytest.approx(
-        dict.fromkeys(before, 0.0) | {"P1": more / 2, "P2": more / 2, "All": more}, abs=1e-9
-    )
+    assert grown == pytest.approx(dict.fromkeys(before, 0.0) | {"P1": more / 2, "P2": more / 2, "All": more}, abs=1e-9)
 
 
 @pytest.fixture(scope="module")
