@@ -29,8 +29,15 @@ Array: TypeAlias = NDArray[np.float64]
 
 BANDS = 4
 """The diagonal of the matrix and the three bands below it: an element's four freedoms are neighbours."""
-SETTLED = 1e-14
-"""The relative size of a last correction that ends the refinement."""
+SETTLED = 1e-13
+SETTLED_MOTION = 1e-10
+"""The relative size of a last correction to couples, and to motions, that ends the refinement.
+
+The error that is left is smaller: a correction is wrong by its own relative error only. Motions of a beam that rocks on
+soft springs settle no further than the rounding of its loads lets them.
+"""
+SOFTEST = 1e-8
+"""Springs may stretch as far as the beam would bend, divided by this: beyond it, bending drowns in rounding."""
 NOISE = 1e-13
 """End couples below this part of the largest one that met in the solve are rounding, and are zero."""
 MOST_CORRECTIONS = 12
@@ -350,7 +357,8 @@ class _System:
         for freedom in self.held:
             u[freedom] = base[freedom]
         couples: list[tuple[float, float]] = []
-        largest, largest_motion = 0.0, _largest(u)
+        largest_motion = _largest(u)
+        largest = 0.0
         for element, tau, moment, total in zip(self.elements, case.tau, case.moment, case.total, strict=True):
             support = moment / element.length
             applied[element.wi] += support
@@ -360,6 +368,9 @@ class _System:
             couples.append((mi - element.near * i - element.far * j, mj - element.far * i - element.near * j))
             largest = max(largest, abs(couples[-1][0]), abs(couples[-1][1]), abs(moment / self.unit_length))
             largest_motion = max(largest_motion, abs(i), abs(j))
+        for freedom in range(self.size):
+            if freedom not in self.held:
+                largest = max(largest, abs(applied[freedom]))
         for _ in range(MOST_CORRECTIONS):
             du = self._correction(applied, u, couples, factor)
             correction = 0.0
@@ -371,7 +382,10 @@ class _System:
                 largest = max(largest, abs(mi + di), abs(mj + dj))
             u = [a + b for a, b in zip(u, du, strict=True)]
             largest_motion = max(largest_motion, _largest(u))
-            if correction <= SETTLED * largest and _largest(du) <= SETTLED * largest_motion:
+            if correction <= SETTLED * largest and _largest(du) <= SETTLED_MOTION * largest_motion:
+                stretch = max((abs(u[freedom] - base[freedom]) for freedom, _ in self.springs), default=0.0)
+                if stretch * SOFTEST * min(element.near for element in self.elements) > largest:
+                    break
                 noise = NOISE * largest
                 return u, [(i if abs(i) > noise else 0.0, j if abs(j) > noise else 0.0) for i, j in couples]
         raise _too_unlike()

@@ -351,6 +351,37 @@ def test_500_beams_agree_with_exact_arithmetic_in_either_units() -> None:
     assert min(seen.values()) > 20
 
 
+def on_springs(stiffnesses: tuple[int, ...], length: F, ei: tuple[int, ...], *loads: Load) -> Beam:
+    """Equal lengths on springs; a spring of stiffness 0 is a pin."""
+    return Beam(
+        marks=tuple(Mark("spring", F(k)) if k else Mark("pinned") for k in stiffnesses),
+        lengths=(length,) * len(ei),
+        ei=tuple(map(F, ei)),
+        ga=None,
+        clauses=tuple(map(Clause, loads)),
+    )
+
+
+@pytest.mark.parametrize(
+    "beam",
+    [
+        on_springs((100, 100), F("7.05"), (33000,), Point(F("15.3"), F("7.05"))),
+        on_springs((5500, 5500), F("0.69"), (190000,), Point(F("15.3"), F("0.69"))),
+        on_springs((95, 7700), F("2.95"), (45000,), Point(F(7), F(0))),
+        on_springs((430000, 0), F("3.31"), (95000,), Point(F("15.3"), F(0))),
+        on_springs((66, 630, 66), F("8.32"), (8100,) * 2, *(Settle(F(1, 100), i) for i in range(3))),
+        on_springs((10, 9200, 10), F("8.91"), (770000,) * 2, udl(F(3), end=F("17.82"))),
+        on_springs((10, 0, 10), F("0.5"), (1000, 10000), udl(F("0.2"), end=F(1))),
+    ],
+    ids=lambda beam: beam.line,
+)
+def test_beams_that_move_more_than_they_bend_agree_with_exact_arithmetic(beam: Beam) -> None:
+    """A beam that its springs let sink nearly or wholly as a rigid body has an answer like any other."""
+    expected = expectations(beam)
+    for units in (KN_M, N_MM):
+        compare(answers(beam, list(expected), units), expected, units, TOLERANCE)
+
+
 def hundred_spans() -> Beam:
     """A hundred equal spans, uniformly loaded, with a point load far along."""
     count = 100

@@ -154,6 +154,16 @@ def test_texts_that_look_like_formulas_stay_texts(tmp_path: Path) -> None:
     assert openpyxl.load_workbook(report.target)["Plan"]["A1"].value == "=say()"
 
 
+def test_a_blank_shows_as_0(tmp_path: Path) -> None:
+    """A formula that only points to a blank cell gives 0, alone, through a function or in an array."""
+    cells = {"A1": "=Z9", "A2": "=IF(TRUE,Z9)", "A3": "=INDEX(Z1:Z9,2)", "A4": ArrayFormula("A4:A5", "=Z8:Z9")}
+    got, report = filled(build(tmp_path / "book.xlsx", cells))
+    assert report.errors == []
+    assert got == dict.fromkeys(("A1", "A2", "A3", "A4", "A5"), 0)
+    spilt = spilling(tmp_path / "spilt.xlsx", "A1:A2", "Z1:Z2", "")
+    assert filled(spilt)[0] == {"A1": 0, "A2": 0, "C1": 0}
+
+
 def test_dates_count_from_the_workbook_s_own_epoch(tmp_path: Path) -> None:
     """The same day has the number of its own date system, four years and a day apart."""
     cells = {"A1": "=DATE(2024,3,15)", "A2": "=YEAR(A1)"}
@@ -306,6 +316,9 @@ def test_every_error_has_its_reason(tmp_path: Path) -> None:
         "B14": "=twice(A1)",
         "B15": "=infinite()",
         "B16": "=SUM(Plan:Data!A1)",
+        "B17": "=SUM(1,",
+        "B18": "=Elsewhere!B18",
+        "B19": "=NA()",
         "Data!A1": "=#REF!",
         "Data!A2": "=refuse()+refuse()",
     }
@@ -334,6 +347,9 @@ def test_every_error_has_its_reason(tmp_path: Path) -> None:
         "Plan!B13": ("#VALUE!", "twice: takes 1 arguments, 0 given"),
         "Plan!B15": ("#NUM!", "the result is not a finite number"),
         "Plan!B16": ("#VALUE!", "the formula uses what cannot be evaluated here"),
+        "Plan!B17": ("#VALUE!", "the formula cannot be read"),
+        "Plan!B18": ("#REF!", "the formula gives #REF!"),
+        "Plan!B19": ("#N/A", "the formula gives #N/A"),
         "Data!A1": ("#REF!", "the formula gives #REF!"),
         "Data!A2": ("#VALUE!", UNREADABLE.reason),
     }

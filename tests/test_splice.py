@@ -160,6 +160,14 @@ def test_prefixes_missing_names_comments_and_entities() -> None:
     )
 
 
+def test_a_cell_s_own_name_goes_before_its_row_s_count() -> None:
+    """Where rows are not numbered, the cells' names say which they are."""
+    xml = sheet(
+        '<row><c r="A1"><f>1</f></c></row><row><c r="B5"><f>2</f></c><c><f>3</f></c></row><row><c><f>4</f></c></row>'
+    )
+    assert list(read(xml).cells) == [(1, 1), (5, 2), (5, 3), (6, 1)]
+
+
 def test_the_engine_sees_spelt_formulas_and_no_stored_results() -> None:
     """In the engine's copy a formula has its new spelling; its value and what an array filled are left out."""
     xml = sheet(

@@ -26,6 +26,7 @@ Place: TypeAlias = "tuple[int, int, int]"
 """The number of a sheet, the row and the column of a cell."""
 
 CIRCULAR = ErrorValue("#CIRC!")
+NOT_READ = ErrorValue("#ERROR!")
 NOT_KNOWN = ErrorValue("#N/IMPL!")
 NO_ROOM = ErrorValue("#SPILL!")
 FITTED = "fitted"
@@ -40,7 +41,7 @@ _KINDS = {
     NUM: "Num",
     NA: "Na",
     "#CALC!": "Calc",
-    "#ERROR!": "Error",
+    NOT_READ: "Error",
     NO_ROOM: "Spill",
     CIRCULAR: "Circ",
     NOT_KNOWN: "NImpl",
@@ -78,7 +79,7 @@ class Engine:
         try:
             self._book = fz.Workbook.from_bytes(book, config=fz.WorkbookConfig(eval_config=settings))
         except (OSError, ValueError, RuntimeError) as error:
-            raise EngineError(" ".join(str(error).split())) from error
+            raise EngineError(_told(error)) from error
         self._book.set_temporal_egress("serial")
         self._sheets = sheets
         self._called = called
@@ -96,7 +97,7 @@ class Engine:
         except fz.ExcelEvaluationError as error:
             if self._stopped:
                 raise self._stopped from None
-            raise EngineError(str(error)) from error
+            raise EngineError(_told(error)) from error
 
     def value(self, place: Place) -> CellValue:
         """Return the value of a cell as it stands."""
@@ -198,6 +199,10 @@ class Engine:
         return fz.LiteralValue.error(_KINDS.get(error.value, "Value"), None)
 
 
+def _told(error: Exception) -> str:
+    return f"it cannot be evaluated ({' '.join(str(error).split())})"
+
+
 def _argument(value: object) -> object:
     if isinstance(value, list):
         return [[_from_engine(one) for one in row] for row in value]
@@ -206,12 +211,12 @@ def _argument(value: object) -> object:
 
 def _from_engine(value: object) -> CellValue:
     if isinstance(value, dict):
-        return _ERRORS.get(value.get("kind", ""), ErrorValue("#ERROR!"))
+        return _ERRORS.get(value.get("kind", ""), NOT_READ)
     if value is None or isinstance(value, str | bool | float):
         return value
     if isinstance(value, int):
         return float(value)
-    return ErrorValue("#ERROR!")
+    return NOT_READ
 
 
 def _criterion(value: object) -> object:

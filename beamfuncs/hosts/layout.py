@@ -104,7 +104,11 @@ class _Reader:
         tag = self._names.get(name)
         if tag == "c":
             reference = attributes.get("r")
-            self._column = self._column + 1 if reference is None else column_number(reference.rstrip("0123456789"))
+            if reference is None:
+                self._column += 1
+            else:
+                letters = reference.rstrip("0123456789")
+                self._column, self._row = column_number(letters), int(reference[len(letters) :])
             self._cell_start = self._parser.CurrentByteIndex
             self._attributes = attributes
             if self._row in self._whole_rows or self._extents:
@@ -134,7 +138,7 @@ class _Reader:
         elif tag == "f" and cell:
             cell.formula_end = self._finish(cell.formula_start)
             text = self._collected()
-            if (text or cell.shared) and cell.kind != WHAT_IF:
+            if text or cell.shared:
                 cell.formula = text
         elif tag == "c":
             if cell:

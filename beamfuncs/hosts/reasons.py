@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from beamfuncs.errors import NA, ErrorValue
-from beamfuncs.hosts.engine import CIRCULAR, NO_ROOM, NOT_KNOWN, Engine, Failure, Place
+from beamfuncs.hosts.engine import CIRCULAR, NO_ROOM, NOT_KNOWN, NOT_READ, Engine, Failure, Place
 
 LARGEST_SEARCHED = 20_000
 """In a range of more cells none is looked for that an error comes from."""
 
 _PLAIN = {
     CIRCULAR: "the formula refers to its own cell, directly or through others",
+    NOT_READ: "the formula cannot be read",
     NOT_KNOWN: "the formula uses what cannot be evaluated here",
     NO_ROOM: "the array that the formula gives needs cells that are not empty",
     "#NAME?": "the formula uses a function or a name that is not known here",
@@ -30,14 +31,15 @@ def reason(engine: Engine, place: Place, giver: Place, value: ErrorValue) -> str
 
 
 def source_of(engine: Engine, place: Place, value: ErrorValue) -> Place | None:
-    """Return the first cell that the formula of a cell refers to and that holds the same error."""
+    """Return the first other cell that the formula of a cell refers to and that holds the same error."""
     for number, area in engine.precedents(place):
         if len(area.rows) * len(area.columns) > LARGEST_SEARCHED:
             continue
         for row, column in area.cells():
-            held = engine.value((number, row, column))
-            if isinstance(held, ErrorValue) and held == value:
-                return number, row, column
+            other = number, row, column
+            held = engine.value(other)
+            if isinstance(held, ErrorValue) and held == value and other != place:
+                return other
     return None
 
 
