@@ -20,6 +20,7 @@ import typer
 if TYPE_CHECKING:
     from beamfuncs.catalogue import Entry
     from beamfuncs.hosts.headless import Report
+    from beamfuncs.hosts.view import View
 
 DONE, DONE_WITH_ERRORS, NOTHING_DONE = 0, 1, 2
 LISTED = 50
@@ -68,6 +69,10 @@ def fill(
         Path | None,
         typer.Option("-o", "--out", metavar="OUT.xlsx", help="Default: BOOK.filled.xlsx beside the workbook."),
     ] = None,
+    show: Annotated[
+        str | None,
+        typer.Option("--show", metavar="PART", help="Print filled values: a sheet, a defined name, or SHEET!A1:F9."),
+    ] = None,
     as_json: Json = False,
 ) -> None:
     """Compute a workbook's formulas and store the values beside them in a copy.
@@ -77,6 +82,7 @@ def fill(
     from beamfuncs.hosts import headless
 
     try:
+        view = headless.view_of(book, show) if show else None
         with _progress_bar() as progress:
             report = headless.fill(book, out, progress=progress)
     except headless.NotFilled as error:
@@ -86,6 +92,8 @@ def fill(
     if as_json:
         print(json.dumps(asdict(report) | {"target": str(report.target)}, indent=2, ensure_ascii=False))
     else:
+        if view:
+            _print_view(report.target, view)
         _summarise(report)
     raise typer.Exit(DONE_WITH_ERRORS if report.errors else DONE)
 
@@ -117,6 +125,23 @@ def list_functions(
 def _give_up(reason: str) -> NoReturn:
     print(f"beamfuncs: {' '.join(reason.split())}", file=sys.stderr)
     raise typer.Exit(NOTHING_DONE)
+
+
+def _print_view(book: Path, view: View) -> None:
+    from rich.box import SIMPLE_HEAD
+    from rich.console import Console
+    from rich.table import Table
+    from rich.text import Text
+
+    from beamfuncs.hosts.view import rows
+
+    head, *body = rows(book, view)
+    table = Table(box=SIMPLE_HEAD)
+    for title in head:
+        table.add_column(Text(title))
+    for row in body:
+        table.add_row(*map(Text, row))
+    Console(highlight=False, width=None if sys.stdout.isatty() else PIPE_WIDTH).print(table)
 
 
 def _summarise(report: Report) -> None:

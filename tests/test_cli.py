@@ -217,3 +217,28 @@ def test_the_version_is_the_package_s() -> None:
     from importlib.metadata import version
 
     assert run("--version")[:2] == (0, f"beamfuncs {version('beamfuncs')}\n")
+
+
+@pytest.mark.parametrize("part", ["Plan", "plan", "'Plan'!$A$1:$D$1", "Plan!A1:D1"])
+def test_filled_values_of_a_part_are_printed(part: str, tmp_path: Path) -> None:
+    """`--show` takes a sheet or an area of it, and prints what stands there after filling."""
+    status, out, _ = run("fill", build(tmp_path / "plan.xlsx", GOOD | {"D1": "=C1/7"}), "--show", part)
+    assert status == 0
+    assert "fixed 8 pinned" in out
+    assert "8.57143" in out
+
+
+def test_a_defined_name_is_shown(tmp_path: Path) -> None:
+    """`--show` takes a defined name."""
+    book = Path(__file__).parent.parent / "workbooks" / "kestrel_quay.xlsx"
+    status, out, _ = run("fill", book, "-o", tmp_path / "out.xlsx", "--show", "pads")
+    assert status == 0
+    assert "Total G" in out
+
+
+def test_a_part_that_is_not_there_is_said_before_anything_is_done(tmp_path: Path) -> None:
+    """`--show` with an unknown part does nothing and says so."""
+    status, _, err = run("fill", build(tmp_path / "plan.xlsx", GOOD), "--show", "Roof")
+    assert status == 2
+    assert "called Roof" in err
+    assert not (tmp_path / "plan.filled.xlsx").exists()

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Callable, Iterable, Iterator, Mapping
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 from functools import cached_property
 from html import escape, unescape
@@ -19,6 +20,7 @@ from beamfuncs.hosts.layout import Cell, Layout, SheetError, read
 from beamfuncs.hosts.package import NotAWorkbook, Package, Sheet
 from beamfuncs.hosts.reasons import reason, source_of
 from beamfuncs.hosts.splice import CellValue, filled, for_engine, written
+from beamfuncs.hosts.view import View, find
 
 T = TypeVar("T")
 
@@ -69,20 +71,36 @@ def fill(
     many of the cells that call them have done so. Raises `NotFilled` when nothing could be done.
     """
     source = Path(source)
-    if not source.is_file():
-        raise NotFilled(f"{source}: {'is a folder' if source.is_dir() else 'there is no such file'}")
     target = source.with_suffix(f".filled{source.suffix}") if target is None else Path(target)
-    _check(source, target)
-    try:
+    with _refusing(source):
+        _check(source, target)
         filling = _Filling(Package.read(source), _catalogued() if functions is None else functions)
         filling.evaluate(progress)
         report = Report(target, len(filling.beam_cells), filling.other_cells, list(filling.faults()))
         filling.package.write(target, filling.parts())
+    return report
+
+
+def view_of(source: Path, name: str) -> View:
+    """Return the part of a workbook that `name` means; raises `NotFilled` where there is none."""
+    with _refusing(source):
+        found = find(Package.read(source), name)
+    if found is None:
+        raise NotFilled(f"{source}: has no sheet, defined name or area that is called {name}")
+    return found
+
+
+@contextmanager
+def _refusing(source: Path) -> Iterator[None]:
+    """Turn what goes wrong with a workbook into `NotFilled`."""
+    if not source.is_file():
+        raise NotFilled(f"{source}: {'is a folder' if source.is_dir() else 'there is no such file'}")
+    try:
+        yield
     except OSError as error:
         raise NotFilled(f"{error.filename or source}: {(error.strerror or str(error)).lower()}") from error
     except (NotAWorkbook, EngineError) as error:
         raise NotFilled(f"{source}: {error}") from error
-    return report
 
 
 def _check(source: Path, target: Path) -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from openpyxl.workbook.defined_name import DefinedName
 from openpyxl.worksheet.worksheet import Worksheet
 
 from sheets import paper, schedule, understood
@@ -63,6 +64,8 @@ def draw(sheet: Worksheet, design: Design) -> None:
     last = _bearings(sheet, design)
     total = _pads(sheet, design, last)
     _proof(sheet, design, last, total)
+    assert sheet.parent is not None
+    sheet.parent.defined_names["Pads"] = DefinedName("Pads", attr_text=f"'{NAME}'!$K$5:$Q${total}")
     paper.heights(sheet, dict.fromkeys(range(FIRST, last + 1), 16))
     sheet.freeze_panes = f"A{FIRST}"
     paper.page(sheet, f"A1:V{last}", design.issue.footer)
