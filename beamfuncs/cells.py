@@ -25,7 +25,7 @@ Frozen: TypeAlias = Cell | tuple[tuple[Cell, ...], ...]
 
 NUMBER = r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?"
 _NUMBER = re.compile(NUMBER)
-_COMMA = re.compile(r"[+-]?[0-9.]*,[0-9.,eE+-]*")
+_COMMA = re.compile(r"[+-]?[0-9.]*,[0-9][0-9.,eE+-]*")
 
 
 def frozen(argument: str, value: object) -> Frozen:

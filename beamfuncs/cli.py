@@ -31,7 +31,7 @@ PIPE_WIDTH = 140
 
 app = typer.Typer(
     name="beamfuncs",
-    help="Worksheet functions that solve any line beam exactly, live in the workbook.",
+    help="Worksheet functions that solve any line beam exactly: fill workbooks, list the functions.",
     no_args_is_help=True,
     add_completion=False,
 )

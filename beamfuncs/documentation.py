@@ -11,7 +11,8 @@ Function = TypeVar("Function", bound=Callable[..., Any])
 
 PARAMETERS = {
     "beam": "Line of marks and lengths [length], as text 'fixed 8 pinned' or a range with one mark or length a cell.",
-    "loads": "Loads as text 'G: udl 5; Q: point 40 at 3', a range of such texts, or a table with a header row.",
+    "loads": "Loads as text 'G: udl 5; Q: point 40 at 3', a range of such texts, or a table with a header row."
+    " Downward, clockwise and sagging are positive.",
     "stiffness": "EI [force·length²]: one number, one for each length, or text 'EI 24000; GA 5e5'. Blank: not given.",
     "combination": "Factors of the load cases, e.g. '1.35 G + 1.5 Q'. Blank: every load once.",
     "x": "Place from the left end [length], or a range of places.",

@@ -6,7 +6,7 @@ from bisect import bisect_right
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 from itertools import pairwise
-from typing import TypeAlias
+from typing import NamedTuple, TypeAlias
 
 import numpy as np
 
@@ -25,8 +25,7 @@ Polynomial: TypeAlias = tuple[float, ...]
 """Coefficients, lowest power first."""
 
 
-@dataclass(frozen=True)
-class Stretch:
+class Stretch(NamedTuple):
     """The fields between two neighbouring breaks, `x` and `end`, as polynomials in the distance `s` from `x`.
 
     `polynomials` and `ends` hold one entry for each of `FIELDS`; `ends` are the values at the right end, known from the

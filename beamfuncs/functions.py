@@ -505,7 +505,7 @@ def loads_read(beam: Argument, loads: Argument) -> str:
     Examples
     --------
     >>> loads_read("pinned 6 roller", "G: udl 5; Q: point 40 at 2")
-    '2 loads: G: distributed 5 from x = 0 to 6; Q: point 40 at x = 2; in all 70 downward, each taken once.'
+    '2 loads: G: distributed 5 from x = 0 to 6; Q: point 40 at x = 2; in all 70 downward, before any factors.'
     """
     line = read_line(frozen("beam", beam))
     return loads_sentence(line, read_loads(frozen("loads", loads), line))

@@ -110,8 +110,12 @@ def _beam_part(word: str) -> Mark | float:
         raise unreadable(f"beam: {quoted(word)} needs its stiffness, e.g. 'spring(2500)' or 'spring(2500, 800)'")
     if is_number(word):
         return number("beam", word)
-    if "," in word:
+    if re.search(r"[0-9],[0-9]", word):
         raise decimal_comma("beam", word)
+    if word.endswith(","):
+        raise unreadable(
+            f"beam: {quoted(word, 30)} ends with a comma; marks and lengths are parted by blanks, {_EXAMPLE}"
+        )
     raise unreadable(f"beam: {quoted(word, 30)} is neither a length nor a mark ({', '.join(MARK_KINDS)}); {_EXAMPLE}")
 
 
@@ -150,6 +154,7 @@ def _mark_text(mark: Mark) -> str:
 # --- the stiffness --------------------------------------------------------------------------------
 
 STIFFNESS_TERMS = ("EI", "GA")
+_THOUSANDS = re.compile(r"(?<![\w.])[0-9]{1,3}(?:\s[0-9]{3})+(?![\w.])")
 
 
 def _stiffness(stiffness: Frozen, lengths: int) -> Stiffness | None:
@@ -165,7 +170,7 @@ def _stiffness(stiffness: Frozen, lengths: int) -> Stiffness | None:
             term = name
             terms[term] = []
         else:
-            size = number("stiffness", word, f"a number or a term ({', '.join(STIFFNESS_TERMS)})")
+            size = number("stiffness", word, _wanted_stiffness(stiffness))
             if size <= 0.0:
                 raise impossible(f"stiffness: {term} is {size:g}; it must be greater than 0")
             terms.setdefault(term, []).append(size)
@@ -180,10 +185,22 @@ def _stiffness(stiffness: Frozen, lengths: int) -> Stiffness | None:
     return Stiffness(values["EI"], values.get("GA"))
 
 
+def _wanted_stiffness(stiffness: Frozen) -> str:
+    wanted = f"a number or a term ({', '.join(STIFFNESS_TERMS)})"
+    if isinstance(stiffness, str) and "+" in stiffness:
+        wanted += "; if this is the combination, leave the stiffness before it blank"
+    return wanted
+
+
 def _stiffness_words(stiffness: Frozen) -> Iterator[str | float]:
     for cell in flat(stiffness):
         if isinstance(cell, str):
-            yield from cell.replace(";", " ").split()
+            if _THOUSANDS.search(cell):
+                raise unreadable(
+                    f"stiffness: {quoted(cell)} may be one number with a blank in it, or several; write 24500 without a"
+                    " blank, or 24. 500. for two"
+                )
+            yield from cell.replace(";", " ").replace("=", " ").split()
         elif cell is not None:
             yield cell
 
@@ -250,7 +267,7 @@ def _clause(where: str, text: str) -> Clause:
         raise unreadable(f"{where}: {quoted(text)}: a case is a letter and then letters, digits or _, e.g. 'G: udl 5'")
     words = _Words(where, text, rest.split())
     kind = _load_kind(where, words.next("a load"))
-    size = number(where, words.next(f"the size, e.g. '{LOAD_KINDS[kind].example}'"))
+    size = words.number(f"the size, e.g. '{LOAD_KINDS[kind].example}'")
     parts: dict[str, float | int] = {}
 
     def put(name: str, value: float | int) -> None:
@@ -287,6 +304,9 @@ def _load_kind(where: str, word: str) -> str:
     return name
 
 
+PLACE_WORDS = ("from", "to", "at", "in", "span", "support")
+
+
 class _Words:
     """The words of a clause, taken from the left."""
 
@@ -307,8 +327,13 @@ class _Words:
         del self.left[: len(words)]
         return True
 
-    def number(self) -> float:
-        return number(self.where, self.next("a number"))
+    def number(self, wanted: str = "a number") -> float:
+        word = self.next(wanted)
+        if word.lower() in PLACE_WORDS:
+            raise unreadable(f"{self.where}: '{word}' in {quoted(self.text)} stands where {wanted} is due")
+        if word.endswith(","):
+            raise unreadable(f"{self.where}: {quoted(word)} ends with a comma; clauses are parted by ';'")
+        return number(self.where, word)
 
     def whole(self, wanted: str) -> int:
         return whole(self.where, self.next(wanted), wanted)

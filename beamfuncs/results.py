@@ -74,7 +74,7 @@ class Result:
     def check(self, which: int) -> None:
         """Raise where a field depends on a stiffness that is not given."""
         if which in (SLOPE, DEFLECTION) and not self.beam.stiffness:
-            raise unreadable(f"stiffness: blank; {FIELDS[which]} needs it, e.g. EI = 24000")
+            raise unreadable(f"stiffness: blank; {FIELDS[which]} needs it; give EI, e.g. 24000")
         self.check_forces()
 
     # --- answers ------------------------------------------------------------------------------------------
@@ -95,8 +95,13 @@ class Result:
     def value(
         self, which: int, x: float, argument: str = "x", span: int | None = None, side: str | None = None
     ) -> float:
-        """Return a field at a place counted from the left end or from the left support of a span."""
+        """Return a field at a place counted from the left end, or from the left support of a span.
+
+        Without a side it is the right one, at the right end of the beam or of a named span the left one.
+        """
         place = self.beam.place(x, argument, span)
+        if side is None and place >= self.beam.extent(argument, span)[1] - self.beam.near:
+            side = LEFT
         if side == LEFT and place <= self.beam.near:
             raise absent(f"{argument}: x = 0 is the left end; there is no beam to the left of it")
         if side == RIGHT and place >= self.beam.length - self.beam.near:

@@ -50,7 +50,7 @@ def loads_sentence(beam: Beam, loads: Loads) -> str:
     words = [f"{load.case}: {_load(beam, load)}" if load.case else _load(beam, load) for load in loads.loads]
     count = f"{len(words)} load{'s' * (len(words) != 1)}"
     total = sum(load.total for load in loads.loads)
-    return f"{count}: {'; '.join(words)}; in all {total:.12g} downward, each taken once."
+    return f"{count}: {'; '.join(words)}; in all {total:.12g} downward, before any factors."
 
 
 def _load(beam: Beam, load: Load) -> str:
@@ -67,7 +67,7 @@ def _load(beam: Beam, load: Load) -> str:
         case Rotation():
             return f"support {_number(beam, load.mark)} turns clockwise by {load.size:.12g}"
         case Curvature():
-            return f"free curvature {load.size:.12g} from x = {load.start:.12g} to {load.end:.12g}"
+            return f"free curvature {load.size:.12g} (sagging positive) from x = {load.start:.12g} to {load.end:.12g}"
 
 
 def _number(beam: Beam, mark: int) -> int:

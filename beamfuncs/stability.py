@@ -62,6 +62,5 @@ def _named(beam: Beam, loose: list[_Part]) -> BeamError:
     start, end = beam.x[part.first], beam.x[part.last]
     which = "the whole beam" if end - start == beam.length else f"the part from x = {start:.12g} to {end:.12g}"
     linked = " with the parts hinged to it" if len(loose) > 1 else ""
-    return impossible(
-        f"beam: a mechanism: {which} {motion}{linked}; hold it with a further support, or leave out a hinge"
-    )
+    remedy = ", or leave out a hinge" if any(mark.hinge for mark in beam.marks) else ""
+    return impossible(f"beam: a mechanism: {which} {motion}{linked}; hold it with a further support{remedy}")

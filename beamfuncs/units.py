@@ -29,7 +29,9 @@ TRADE_UNITS = {
 """Spellings of the trade that the unit library does not know, or takes for something else."""
 
 LONGEST = 40
-_FACTOR = re.compile(r"\s*([*·×/]?)\s*(?:(1)(?![0-9])|([A-Za-zµ°]+)\s*(?:(?:\^|\*\*)?\s*(-?[0-9]|[²³⁴])(?![0-9]))?)\s*")
+_FACTOR = re.compile(
+    r"\s*([*·×./-]?)\s*(?:(1)(?![0-9])|([A-Za-zµ°]+)\s*(?:(?:\^|\*\*)?\s*(-?[0-9]|[²³⁴])(?![0-9]))?)\s*"
+)
 _SUPERSCRIPTS = str.maketrans("²³⁴", "234")
 
 
@@ -41,17 +43,23 @@ def factor(from_unit: Frozen, to_unit: Frozen) -> float:
     """
     source, target = _unit("from_unit", from_unit), _unit("to_unit", to_unit)
     if source.dimensionality != target.dimensionality:
-        raise unreadable(
-            f"to_unit: {quoted(to_unit, 20)} is {target.dimensionality},"
-            f" but {quoted(from_unit, 20)} is {source.dimensionality}"
-        )
+        hint = "; a force is lbf, kip or N, not lb or kg" if _apart_by_gravity(source, target) else ""
+        raise unreadable(f"to_unit: {quoted(to_unit)} and {quoted(from_unit)} are of different dimensions{hint}")
     if _registry().convert(0.0, source, target) != 0.0:
         raise unreadable(f"from_unit: {quoted(from_unit)} and {quoted(to_unit)} count from different zeros")
     return float(_registry().convert(1.0, source, target))
 
 
+def _apart_by_gravity(source: Any, target: Any) -> bool:
+    """Tell whether a mass stands where a force is meant."""
+    acceleration = _registry().Unit("m/s**2").dimensionality
+    return (source / target).dimensionality in (acceleration, 1 / acceleration)
+
+
 def _unit(argument: str, text: Frozen) -> Any:
     """Return the unit that a text names: units with powers, joined by blanks, points or strokes, and nothing else."""
+    if text is None:
+        raise unreadable(f"{argument}: blank; write a unit such as 'kN/m'")
     if not isinstance(text, str) or len(text) > LONGEST:
         raise unreadable(f"{argument}: {quoted(text)}; write a unit such as 'kN/m', in up to {LONGEST} characters")
     unit = _registry().Unit("")

@@ -62,6 +62,11 @@ def test_spans_and_overhangs() -> None:
     assert f.moment_min(beam, loads) == -5.0
     assert f.beam_result(beam, loads, "moment at 0 in span 1") == -5.0
     assert f.beam_result(beam, loads, "moment at 3 in span 1") == 40.0
+    two_spans = "pinned 4 pinned 4 pinned"
+    assert f.beam_result(two_spans, "udl 5", "shear at 4 in span 1") == -12.5
+    assert f.beam_result(two_spans, "udl 5", "shear at 0 in span 2") == 12.5
+    assert f.beam_result(two_spans, "udl 5", "shear at 4") == 12.5
+    assert f.beam_result(two_spans, "udl 5", "shear at 4 in span 1 right") == 12.5
     with pytest.raises(BeamError) as caught:
         f.moment_max("fixed 3 free", loads, 1)
     assert caught.value.value == "#N/A"
@@ -179,7 +184,7 @@ def test_sentences_say_what_was_understood() -> None:
         "G: varying 1 to 3 in span 2; couple -2 at 1; settle 0.01 at support 2; rotate 0.1 at support 1; curvature 0.2",
     ) == (
         "5 loads: G: distributed 1 to 3 from x = 4 to 8; clockwise couple -2 at x = 1; support 2 sinks by 0.01;"
-        " support 1 turns clockwise by 0.1; free curvature 0.2 from x = 0 to 8; in all 8 downward, each taken once."
+        " support 1 turns clockwise by 0.1; free curvature 0.2 (sagging positive) from x = 0 to 8; in all 8 downward, before any factors."
     )
 
 
@@ -192,6 +197,8 @@ def test_sentences_say_what_was_understood() -> None:
         ("N/mm²", "MPa", 1.0),
         ("GPa cm4", "kNm2", 0.01),
         ("1/m", "1/mm", 1e-3),
+        ("m-1", "1/mm", 1e-3),
+        ("kN.m", "kN-m", 1.0),
         ("kip", "lbf", 1000.0),
         ("k", "kip", 1.0),
         ("kip ft", "kipin", 12.0),

@@ -150,6 +150,7 @@ def test_a_blank_combination_or_stiffness_is_not_given(blank: object) -> None:
         (24000, (24000.0, 24000.0), None),
         ("24000", (24000.0, 24000.0), None),
         ("2e4 3e4", (2e4, 3e4), None),
+        ("EI = 840. 900.; GA=5e5", (840.0, 900.0), (5e5, 5e5)),
         ([[2e4], [3e4]], (2e4, 3e4), None),
         ([[2e4, None, "3e4"]], (2e4, 3e4), None),
         ("EI 24000; GA 5e5", (24000.0, 24000.0), (5e5, 5e5)),

@@ -7,7 +7,7 @@ from pathlib import Path
 from typing import NamedTuple
 from xml.etree import ElementTree
 
-from beamfuncs.hosts.grid import area
+from beamfuncs.hosts.grid import area, column_name
 from beamfuncs.hosts.package import Package
 
 DIGITS = 6
@@ -37,13 +37,19 @@ def find(package: Package, name: str) -> View | None:
 
 
 def rows(book: Path, view: View) -> list[list[str]]:
-    """Return the values of a part of a workbook, row by row, without rows and columns that hold nothing."""
+    """Return the values of a part of a workbook, row by row, without rows and columns that hold nothing.
+
+    The first row holds the letters of the columns, the first column the numbers of the rows.
+    """
     import openpyxl
 
     sheet = openpyxl.load_workbook(book, data_only=True)[view.sheet]
-    cells = [[_text(cell.value) for cell in row] for row in sheet[view.area or sheet.dimensions]]
-    columns = [c for c in range(len(cells[0])) if any(row[c] for row in cells)]
-    return [[row[c] for c in columns] for row in cells if any(row)]
+    first = area(view.area or sheet.dimensions)
+    values = sheet.iter_rows(first.top, first.bottom, first.left, first.right, values_only=True)
+    cells = [[_text(value) for value in row] for row in values]
+    columns = [c for c in range(len(first.columns)) if any(row[c] for row in cells)]
+    letters = ["", *(column_name(first.left + c) for c in columns)]
+    return [letters, *([str(first.top + r), *(row[c] for c in columns)] for r, row in enumerate(cells) if any(row))]
 
 
 def _text(value: object) -> str:
