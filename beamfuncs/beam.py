@@ -13,6 +13,18 @@ from beamfuncs.errors import absent, impossible, unreadable
 RIGID = inf
 
 
+SMALLEST, LARGEST = 1e-30, 1e30
+"""Lengths and stiffnesses lie between these, so that no product of them leaves the range of numbers."""
+
+
+def check_size(what: str, size: float) -> None:
+    """Raise where a length or a stiffness is not greater than 0, or beyond all reason."""
+    if not size > 0.0:
+        raise impossible(f"{what} is {size:g}; it must be greater than 0")
+    if not SMALLEST <= size <= LARGEST:
+        raise impossible(f"{what} is {size:g}; it must lie between {SMALLEST:g} and {LARGEST:g}: check the units")
+
+
 @dataclass(frozen=True)
 class MarkKind:
     """What a mark does to the beam: the stiffness that holds it, whether it counts as a support, where it may stand."""
@@ -57,8 +69,8 @@ class Mark:
     def spring(cls, kv: float, kr: float = 0.0) -> Mark:
         """Return a spring support of vertical stiffness `kv` and rotational stiffness `kr`."""
         for name, stiffness in (("kv", kv), ("kr", kr)):
-            if not 0.0 <= stiffness < inf:
-                raise impossible(f"beam: spring {name} = {stiffness:g}; a spring stiffness is 0 or more, and finite")
+            if stiffness != 0.0:
+                check_size(f"beam: spring {name}", stiffness)
         return cls("spring", kv, kr)
 
     @property
@@ -94,10 +106,11 @@ class Beam:
         if len(self.marks) != len(self.lengths) + 1 or not self.lengths:
             raise unreadable("beam: a line has marks and lengths in turn, e.g. 'fixed 8 pinned'")
         for number, length in enumerate(self.lengths, 1):
-            if not 0.0 < length < inf:
-                raise impossible(f"beam: length {number} is {length:g}; a length is greater than 0, and finite")
-        if not isfinite(sum(self.lengths)):
-            raise impossible("beam: the lengths add up to more than a number can hold")
+            check_size(f"beam: length {number}", length)
+            if length <= self.near:
+                raise impossible(
+                    f"beam: length {number} is {length:g}, next to nothing beside the whole, {self.length:g}"
+                )
         last = len(self.lengths)
         for place, mark in enumerate(self.marks):
             kind = MARK_KINDS[mark.kind]

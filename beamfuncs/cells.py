@@ -23,7 +23,7 @@ Argument: TypeAlias = Cell | Range
 Frozen: TypeAlias = Cell | tuple[tuple[Cell, ...], ...]
 """An argument made hashable: a cell, or a tuple of rows of more than one cell."""
 
-NUMBER = r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?"
+NUMBER = r"[+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?"
 _NUMBER = re.compile(NUMBER)
 _COMMA = re.compile(r"[+-]?[0-9.]*,[0-9][0-9.,eE+-]*")
 
@@ -100,7 +100,7 @@ def _cell(where: str, value: object) -> Cell:
     if isinstance(value, (Real, Decimal)):
         try:
             return float(value)
-        except OverflowError:
+        except (OverflowError, ValueError):
             raise impossible(f"{where}: {quoted(str(value))} is larger than a number can hold") from None
     if isinstance(value, (date, time, timedelta)):
         raise unreadable(f"{where}: {value} is a date or time; give a number or text")

@@ -73,6 +73,14 @@ def fill(
         str | None,
         typer.Option("--show", metavar="PART", help="Print filled values: a sheet, a defined name, or SHEET!A1:F9."),
     ] = None,
+    in_place: Annotated[
+        bool,
+        typer.Option("--in-place", help="Fill the workbook itself; a dated copy of it is kept beside it."),
+    ] = False,
+    listing: Annotated[
+        Path | None,
+        typer.Option("--report", metavar="FILE", help="Tell of every beam cell in a .csv, .json or .html (drawings)."),
+    ] = None,
     as_json: Json = False,
 ) -> None:
     """Compute a workbook's formulas and store the values beside them in a copy.
@@ -81,20 +89,52 @@ def fill(
     """
     from beamfuncs.hosts import headless
 
+    if in_place and out:
+        _give_up("--in-place and --out exclude each other: the workbook is filled itself, or a copy of it")
     try:
         view = headless.view_of(book, show) if show else None
         with _progress_bar() as progress:
-            report = headless.fill(book, out, progress=progress)
+            report = headless.fill(book, out, progress=progress, in_place=in_place, listing=listing)
     except headless.NotFilled as error:
         _give_up(str(error))
     except KeyboardInterrupt:
         _give_up("interrupted: nothing was written")
     if as_json:
-        print(json.dumps(asdict(report) | {"target": str(report.target)}, indent=2, ensure_ascii=False))
+        print(json.dumps(asdict(report), indent=2, ensure_ascii=False, default=str))
     else:
         if view:
             _print_view(report.target, view)
         _summarise(report)
+    raise typer.Exit(DONE_WITH_ERRORS if report.errors else DONE)
+
+
+@app.command()
+def freeze(
+    book: Annotated[Path, typer.Argument(metavar="BOOK.xlsx", help="The workbook; it is only read.")],
+    out: Annotated[
+        Path | None,
+        typer.Option("-o", "--out", metavar="OUT.xlsx", help="Default: BOOK.frozen.xlsx beside the workbook."),
+    ] = None,
+    as_json: Json = False,
+) -> None:
+    """Replace beam formulas by their values in a copy, for a reader without the functions.
+
+    Each formula is kept in a note on its cell; all other formulas stay live.
+    Exit status: 0 done; 1 done, but some cell has an error; 2 nothing done.
+    """
+    from beamfuncs.hosts import headless
+
+    try:
+        with _progress_bar() as progress:
+            report = headless.fill(book, out, progress=progress, freeze=True)
+    except headless.NotFilled as error:
+        _give_up(str(error))
+    except KeyboardInterrupt:
+        _give_up("interrupted: nothing was written")
+    if as_json:
+        print(json.dumps(asdict(report), indent=2, ensure_ascii=False, default=str))
+    else:
+        _summarise(report, action="frozen")
     raise typer.Exit(DONE_WITH_ERRORS if report.errors else DONE)
 
 
@@ -144,14 +184,16 @@ def _print_view(book: Path, view: View) -> None:
     Console(highlight=False, width=None if sys.stdout.isatty() else PIPE_WIDTH).print(table)
 
 
-def _summarise(report: Report) -> None:
+def _summarise(report: Report, action: str = "filled") -> None:
     from rich.console import Console
     from rich.text import Text
 
     console = Console(highlight=False, soft_wrap=True)
-    done = f"{_count(report.beam_cells, 'beam cell')} filled, {_count(report.recomputed, 'other cell')} recomputed"
+    done = f"{_count(report.beam_cells, 'beam cell')} {action}, {_count(report.recomputed, 'other cell')} recomputed"
     errors = (f"{_count(len(report.errors), 'cell')} in error", "red") if report.errors else ("no errors", "green")
     console.print(Text.assemble((str(report.target), "bold"), f": {done}, ", errors))
+    if report.original:
+        console.print(Text(f"  as it was: {report.original}"))
     for fault in report.errors[:LISTED]:
         console.print(Text.assemble(f"  {fault.sheet}!{fault.cell}  ", (fault.value, "red"), f"  {fault.reason}"))
     if len(report.errors) > LISTED:

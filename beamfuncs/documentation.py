@@ -23,8 +23,12 @@ PARAMETERS = {
 
 RAISES = """\
 BeamError
-    `#VALUE!` where an argument cannot be read or is missing, `#NUM!` where the beam is a mechanism or a
-    number is out of range, `#N/A` where what is asked for is not there. `fault` gives the reason."""
+    `#VALUE!` where an argument cannot be read or is missing, `#NUM!` where a number is out of range,
+    `#N/A` where a support, a span or a place is not there."""
+
+SOLVED_RAISES = f"""\
+{RAISES}
+    Also `#NUM!` where the beam is a mechanism. `fault` gives the reason."""
 
 SOLVED_NOTES = """\
 Linear elastic, small deflections, solved exactly by the direct stiffness method (J. S. Przemieniecki, Theory of
@@ -71,8 +75,9 @@ def _completed(function: Callable[..., Any]) -> str:
     told = PARAMETERS | parameters(own.get("Parameters", ""))
     names = list(inspect.signature(function).parameters)
     own["Parameters"] = "\n".join(f"{name}\n    {told[name]}" for name in names)
-    own.setdefault("Raises", RAISES)
-    if {"beam", "loads"} <= set(names):
+    solved = {"beam", "loads", "stiffness"} <= set(names)
+    own.setdefault("Raises", SOLVED_RAISES if solved else RAISES)
+    if solved:
         own["Notes"] = f"{own['Notes']}\n\n{SOLVED_NOTES}" if "Notes" in own else SOLVED_NOTES
     headed = [f"{name}\n{'-' * len(name)}\n{own[name]}" for name in SECTIONS if name in own]
     return "\n\n".join([own[""], *headed]) + "\n"

@@ -26,10 +26,10 @@ Polynomial: TypeAlias = tuple[float, ...]
 
 
 class Stretch(NamedTuple):
-    """The fields between two neighbouring breaks, `x` and `end`, as polynomials in the distance `s` from `x`.
+    """The fields between two neighbouring breaks `x` and `end`, as polynomials in the distance `s` from `x`.
 
-    `polynomials` and `ends` hold one entry for each of `FIELDS`; `ends` are the values at the right end, known from the
-    solve, so that a moment that is zero there is zero and no rounding of a polynomial.
+    `polynomials` and `ends` hold one entry for each of `FIELDS`; `ends` are the values at the right end, at a mark
+    those of the solve, so that a moment that is zero there is zero and no rounding of a polynomial.
     """
 
     x: float
@@ -80,6 +80,10 @@ class Fields:
             return self.stretches[k - 1].ends[which] if side == LEFT and k else stretch.polynomials[which][0]
         return evaluate(stretch.polynomials[which], s)
 
+    def peak(self, which: int) -> float:
+        """Return a bound on the magnitude of a field, not far above its largest one."""
+        return max(evaluate(tuple(map(abs, p.polynomials[which])), p.length) for p in self.stretches)
+
     def within(self, start: float, end: float) -> tuple[Stretch, ...]:
         """Return the stretches from one mark to another."""
         near = self.beam.near
@@ -93,14 +97,14 @@ class Fields:
             candidates += [(p.x + s, p.value(which, s)) for s in p.stationary(which)]
             candidates.append((p.end, p.value(which, p.length)))
         best = max(sign * value for _, value in candidates)
-        equal = TIE * max(abs(value) for _, value in candidates)
+        equal = TIE * self.peak(which)
         place = next(x for x, value in candidates if sign * value >= best - equal)
         return sign * best + 0.0, place
 
     def contraflexure(self) -> list[float]:
         """Return the places where the moment changes sign."""
         places = []
-        zero = TIE * max(abs(self.extreme(MOMENT, sign, 0.0, self.beam.length)[0]) for sign in (1, -1))
+        zero = TIE * self.peak(MOMENT)
         last_sign, last_end = 0, 0.0
         for p in self.stretches:
             for a, b in pairwise((0.0, *p.zeros(MOMENT), p.length)):
@@ -171,7 +175,7 @@ def _element(
             V, M, phi, v = ends
             jumping = set()
             for piece in pieces:
-                if piece.start == piece.end and abs(piece.start - b) <= near:
+                if piece.start == piece.end and min(breaks, key=lambda place: abs(place - piece.start)) == b:
                     if piece.kind is Point:
                         V -= factors[piece.column] * piece.size
                         jumping.add(SHEAR)
@@ -274,4 +278,4 @@ def roots(polynomial: Polynomial, length: float) -> list[float]:
 def _bracketed(polynomial: Polynomial, a: float, b: float) -> float:
     from scipy.optimize import brentq
 
-    return float(brentq(lambda s: evaluate(polynomial, s), a, b, xtol=1e-16 * b, rtol=1e-15))
+    return float(brentq(lambda s: evaluate(polynomial, s), a, b, xtol=1e-16 * b, rtol=1e-15, maxiter=1000))

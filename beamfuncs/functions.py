@@ -38,7 +38,7 @@ from beamfuncs.notation import (
     read_line,
     read_loads,
 )
-from beamfuncs.results import Result, combined, read_phrase
+from beamfuncs.results import Result, read_phrase
 from beamfuncs.sentences import beam_sentence, loads_sentence
 from beamfuncs.stiffness import Solution, solve
 
@@ -74,7 +74,7 @@ def reaction(
     >>> reaction("pinned 6 roller", "G: udl 5; Q: point 40 at 2", 2, None, "1.35 G + 1.5 Q")
     40.25
     """
-    return _result(beam, loads, stiffness, combination).reaction(_whole("support", support))
+    return _result(beam, loads, stiffness, combination).reaction(_one_whole("support", support))
 
 
 @worksheet_function
@@ -96,7 +96,7 @@ def reaction_moment(
     >>> reaction_moment("fixed 8 pinned", "udl 12", 1)
     -96.0
     """
-    return _result(beam, loads, stiffness, combination).reaction_moment(_whole("support", support))
+    return _result(beam, loads, stiffness, combination).reaction_moment(_one_whole("support", support))
 
 
 @worksheet_function
@@ -400,7 +400,7 @@ def diagram(
     """
     result = _result(beam, loads, stiffness, combination)
     cell = frozen("points", points)
-    number_of_points = POINTS if not_given(cell) else _whole("points", points)
+    number_of_points = POINTS if not_given(cell) else _one_whole("points", points)
     if not 2 <= number_of_points <= MOST_POINTS:
         raise impossible(f"points: {number_of_points}; give from 2 to {MOST_POINTS}")
     rows: Rows = [list(row) for row in result.diagram(number_of_points)]
@@ -461,8 +461,8 @@ def load_line(*part: Argument) -> str:
     Parameters
     ----------
     part
-        Words, numbers and pieces of clauses, in order; a range is read cell by cell, its blanks skipped. A load table
-        with its header row is turned into text.
+        Words, numbers and pieces of clauses, in order; a range is read cell by cell, its blanks skipped. One range of
+        whole clauses, or a load table with its header row, is turned into text.
 
     Returns
     -------
@@ -473,8 +473,8 @@ def load_line(*part: Argument) -> str:
     >>> load_line("G: udl", 5.25, "; Q: point", 40, "at", 3)
     'G: udl 5.25; Q: point 40 at 3'
     """
-    table = frozen("part 1", part[0]) if len(part) == 1 else None
-    loads = table if is_load_table(table) else _joined(part)
+    only = frozen("part 1", part[0]) if len(part) == 1 else None
+    loads = only if is_load_table(only) or _holds_clauses(only) else _joined(part)
     return "; ".join(clause_text(clause) for clause in read_clauses(loads))
 
 
@@ -591,7 +591,7 @@ def _cached(beam: Frozen, loads: Frozen, stiffness: Frozen, combination: Frozen)
     line = read_beam(frozen("beam", beam), frozen("stiffness", stiffness))
     placed = read_loads(frozen("loads", loads), line)
     factors = placed.factors(read_combination(frozen("combination", combination)))
-    return combined(_solution(line, placed), factors)
+    return Result.of(_solution(line, placed), factors)
 
 
 @lru_cache(SOLVED)
@@ -618,7 +618,7 @@ def _extreme(
     combination: Argument,
 ) -> float:
     result = _result(beam, loads, stiffness, combination)
-    number_of_span = None if span is None or not_given(frozen("span", span)) else _whole("span", span)
+    number_of_span = None if span is None or not_given(frozen("span", span)) else _one_whole("span", span)
     return result.extreme(which, sign, "span", number_of_span)[0]
 
 
@@ -626,18 +626,23 @@ def _each(argument: str, cells: Argument, answer: Callable[[str, Cell], float]) 
     """Return the answer for a cell, or for each cell of a range."""
     if is_range(cells):
         return each(argument, cells, answer)
-    return answer(argument, _cell(argument, cells))
+    return answer(argument, _one_cell(argument, cells))
 
 
-def _whole(argument: str, value: Argument) -> int:
-    return whole(argument, _cell(argument, value))
+def _one_whole(argument: str, value: Argument) -> int:
+    return whole(argument, _one_cell(argument, value))
 
 
-def _cell(argument: str, value: Argument) -> Cell:
+def _one_cell(argument: str, value: Argument) -> Cell:
     cell = frozen(argument, value)
     if isinstance(cell, tuple):
         raise unreadable(f"{argument}: a range of {len(cell)} by {len(cell[0])} cells; give one cell")
     return cell
+
+
+def _holds_clauses(value: Frozen) -> bool:
+    """Tell whether a range holds clauses and not single words: some cell holds a word and more."""
+    return isinstance(value, tuple) and any(isinstance(cell, str) and len(cell.split()) > 1 for cell in flat(value))
 
 
 def _joined(parts: tuple[Argument, ...]) -> str:

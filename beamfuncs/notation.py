@@ -7,7 +7,7 @@ from collections.abc import Callable, Iterator
 from functools import lru_cache
 from math import inf
 
-from beamfuncs.beam import MARK_ALIASES, MARK_KINDS, Beam, Mark, Stiffness
+from beamfuncs.beam import MARK_ALIASES, MARK_KINDS, Beam, Mark, Stiffness, check_size
 from beamfuncs.cells import (
     NUMBER,
     Cell,
@@ -33,7 +33,7 @@ _SPRING = re.compile(r"spring\s*\((.*)\)", re.IGNORECASE | re.DOTALL)
 _CASE = r"[^\W\d_]\w*"
 _CASE_PREFIX = re.compile(rf"\s*({_CASE})\s*:(.*)", re.DOTALL)
 _CLAUSE_END = re.compile(r"[;\n\r\v\f\x85\u2028\u2029]")
-_TERM = re.compile(rf"\s*([+-]?)\s*({NUMBER})?\s*\*?\s*({_CASE})?")
+_TERM = re.compile(rf"\s*([+-]?)\s*(?:({NUMBER})\s*\*?)?\s*({_CASE})?")
 
 
 # --- the beam -------------------------------------------------------------------------------------
@@ -171,14 +171,18 @@ def _stiffness(stiffness: Frozen, lengths: int) -> Stiffness | None:
             terms[term] = []
         else:
             size = number("stiffness", word, _wanted_stiffness(stiffness))
-            if size <= 0.0:
-                raise impossible(f"stiffness: {term} is {size:g}; it must be greater than 0")
+            check_size(f"stiffness: {term}", size)
             terms.setdefault(term, []).append(size)
     for name, sizes in terms.items():
         if len(sizes) not in (1, lengths):
             raise unreadable(
                 f"stiffness: {len(sizes)} values of {name} for {lengths} lengths; give one, or one for each length"
             )
+    cells = [cell for cell in flat(stiffness) if cell is not None]
+    if isinstance(stiffness, tuple) and lengths > 1 and len(cells) == 1 and not isinstance(cells[0], str):
+        raise unreadable(
+            f"stiffness: one value and blanks for {lengths} lengths; give one cell, or one value for each length"
+        )
     if "EI" not in terms:
         raise unreadable("stiffness: has no EI; give it too, e.g. 'EI 24000; GA 5e5'")
     values = {name: tuple(sizes * lengths if len(sizes) == 1 else sizes) for name, sizes in terms.items()}

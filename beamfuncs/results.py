@@ -48,6 +48,15 @@ class Result:
     total_load: float
     _extremes: dict[tuple[int, int, int | None], tuple[float, float]] = field(default_factory=dict, compare=False)
 
+    @classmethod
+    def of(cls, solution: Solution, factors: tuple[float, ...]) -> Result:
+        """Return the result of a linear combination of the columns of a solution."""
+        ends, reactions, reaction_moments, total = solution.combined(factors)
+        for value in (*reactions, *reaction_moments, total):
+            _finite(value)
+        along = fields(solution, ends, factors)
+        return cls(solution.beam, solution.loads, factors, along, reactions, reaction_moments, total)
+
     # --- whether the stiffness is known where it counts --------------------------------------------------
 
     @cached_property
@@ -60,7 +69,7 @@ class Result:
         if any(mark.kind == "step" for mark in self.beam.marks):
             return "a step of the stiffness"
         named = dict(zip(self.loads.cases, self.factors, strict=True))
-        if any(load.imposed and named[load.case] for load in self.loads.loads):
+        if any(load.imposed and load.size and named[load.case] for load in self.loads.loads):
             return "imposed settlements, rotations or curvatures"
         return None
 
@@ -152,15 +161,6 @@ class Result:
             yield [x, *(_finite(self.fields.value(which, x, side)) for which in range(len(FIELDS)))]
 
 
-def combined(solution: Solution, factors: tuple[float, ...]) -> Result:
-    """Return the result of a linear combination of the columns of a solution."""
-    ends, reactions, reaction_moments, total = solution.combined(factors)
-    for value in (*reactions, *reaction_moments, total):
-        _finite(value)
-    along = fields(solution, ends, factors)
-    return Result(solution.beam, solution.loads, factors, along, reactions, reaction_moments, total)
-
-
 def _finite(value: float) -> float:
     """Return a result, -0.0 made 0.0; raise where it is larger than a number can hold."""
     if not isfinite(value):
@@ -204,7 +204,7 @@ def read_phrase(cell: Cell) -> Phrase:
             span=whole("phrase, span", span_text, "a span number") if span_text else None,
             side=found["side"],
         )
-    comma = re.search(r"\S*\d,\d\S*", text)
-    if comma:
-        raise decimal_comma("phrase", comma[0])
+    for word in text.split():
+        if re.search(r"[0-9],[0-9]", word):
+            raise decimal_comma("phrase", word)
     raise unreadable(f"phrase: {quoted(text, 40)} is not understood; write e.g. {EXAMPLES}")

@@ -36,7 +36,7 @@ SETTLED_MOTION = 1e-10
 The error that is left is smaller: a correction is wrong by its own relative error only. Motions of a beam that rocks on
 soft springs settle no further than the rounding of its loads lets them.
 """
-SOFTEST = 1e-8
+SOFTEST = 1e-7
 """Springs may stretch as far as the beam would bend, divided by this: beyond it, bending drowns in rounding."""
 NOISE = 1e-13
 """End couples below this part of the largest one that met in the solve are rounding, and are zero."""
@@ -69,14 +69,18 @@ class Element(NamedTuple):
     wj: int
     tj: int
     L: float
-    near: float
-    far: float
+    bow: float
+    sway: float
 
     def couples(self, u: Sequence[float]) -> tuple[float, float]:
         """Return the end couples that motions of the freedoms raise."""
         chord = (u[self.wj] - u[self.wi]) / self.L
-        i, j = u[self.ti] - chord, u[self.tj] - chord
-        return self.near * i + self.far * j, self.far * i + self.near * j
+        return self.resisting(u[self.ti] - chord, u[self.tj] - chord)
+
+    def resisting(self, i: float, j: float) -> tuple[float, float]:
+        """Return the end couples of end rotations against the chord: `bow` resists opposite ones, `sway` equal ones."""
+        swaying, bowing = self.sway * (i + j), self.bow * (i - j)
+        return swaying + bowing, swaying - bowing
 
 
 class Combined(NamedTuple):
@@ -240,7 +244,8 @@ class _System:
         self.unit_rotation = self.unit_length**2 / _power_of_two(max(EI))
         self.unit_deflection = self.unit_length * self.unit_rotation
 
-        # The freedoms: [w, rotation] at a node, [left rotation, w, right rotation] at a hinge.
+        # The freedoms: [w, rotation] at a node, [left rotation, w, right rotation] at a hinge. Springs beside an
+        # unknown stiffness may as well be rigid: only forces that do not depend on either are answered then.
         self.w: list[int] = []
         self.left: list[int] = []
         self.right: list[int] = []
@@ -257,7 +262,7 @@ class _System:
                 (w, mark.kv, self.unit_deflection),
                 (w + 1, mark.kr, self.unit_rotation / self.unit_length),
             ):
-                if stiffness == inf:
+                if stiffness == inf or (stiffness > 0.0 and not beam.stiffness):
                     self.held.append(freedom)
                 elif stiffness > 0.0:
                     self.springs.append((freedom, stiffness * unit))
@@ -265,16 +270,17 @@ class _System:
 
     def _element(self, e: int, length: float, EI: float, GA: float | None) -> Element:
         L = length / self.unit_length
-        b = EI * (self.unit_rotation / self.unit_length**2) / L
-        shear = 12.0 * EI / GA / length**2 if GA else 0.0
-        near, far = b * (4.0 + shear) / (1.0 + shear), b * (2.0 - shear) / (1.0 + shear)
-        return Element(length, EI, GA, self.w[e], self.right[e], self.w[e + 1], self.left[e + 1], L, near, far)
+        bow = EI * (self.unit_rotation / self.unit_length**2) / L
+        sway = 3.0 * bow / (1.0 + 12.0 * EI / GA / length**2) if GA else 3.0 * bow
+        freedoms = (self.w[e], self.right[e], self.w[e + 1], self.left[e + 1])
+        return Element(length, EI, GA, *freedoms, L, bow, sway)
 
     def factor(self) -> Array:
         """Return the banded Cholesky factor of the matrix; a held freedom has 1 on the diagonal and no neighbours."""
         bands = [[0.0] * BANDS for _ in range(self.size)]
-        for wi, ti, wj, tj, L, near, far in (element[3:] for element in self.elements):
-            turn = (near + far) / L
+        for wi, ti, wj, tj, L, bow, sway in (element[3:] for element in self.elements):
+            near, far = sway + bow, sway - bow
+            turn = 2.0 * sway / L
             lift = 2.0 * turn / L
             bands[wi][0] += lift
             bands[wj][0] += lift
@@ -364,13 +370,12 @@ class _System:
             applied[element.wi] += support
             applied[element.wj] += total - support
             i, j = tau[0] / self.unit_rotation, tau[1] / self.unit_rotation
-            mi, mj = element.couples(u)
-            couples.append((mi - element.near * i - element.far * j, mj - element.far * i - element.near * j))
+            (mi, mj), (fixed_i, fixed_j) = element.couples(u), element.resisting(i, j)
+            couples.append((mi - fixed_i, mj - fixed_j))
             largest = max(largest, abs(couples[-1][0]), abs(couples[-1][1]), abs(moment / self.unit_length))
             largest_motion = max(largest_motion, abs(i), abs(j))
-        for freedom in range(self.size):
-            if freedom not in self.held:
-                largest = max(largest, abs(applied[freedom]))
+        held = set(self.held)
+        largest = max([largest, *(abs(force) for freedom, force in enumerate(applied) if freedom not in held)])
         for _ in range(MOST_CORRECTIONS):
             du = self._correction(applied, u, couples, factor)
             correction = 0.0
@@ -384,7 +389,7 @@ class _System:
             largest_motion = max(largest_motion, _largest(u))
             if correction <= SETTLED * largest and _largest(du) <= SETTLED_MOTION * largest_motion:
                 stretch = max((abs(u[freedom] - base[freedom]) for freedom, _ in self.springs), default=0.0)
-                if stretch * SOFTEST * min(element.near for element in self.elements) > largest:
+                if stretch * SOFTEST * min(element.bow for element in self.elements) > largest:
                     break
                 noise = NOISE * largest
                 return u, [(i if abs(i) > noise else 0.0, j if abs(j) > noise else 0.0) for i, j in couples]

@@ -25,6 +25,7 @@ TRADE_UNITS = {
     "plf": "lbf/ft",
     "ksf": "kip/ft2",
     "psf": "lbf/ft2",
+    "pcf": "lbf/ft3",
 }
 """Spellings of the trade that the unit library does not know, or takes for something else."""
 

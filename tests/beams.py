@@ -241,8 +241,10 @@ def marked(mark: Mark) -> str:
 
 
 def terms(stiffness: tuple[Fraction, ...]) -> str:
-    """One number where all lengths share it, else one a length."""
-    return " ".join(map(written, stiffness[:1] if len(set(stiffness)) == 1 else stiffness))
+    """One number, or one for each length; several whole numbers end in a point, lest they be read as one."""
+    if len(set(stiffness)) == 1:
+        return written(stiffness[0])
+    return " ".join(text if "." in text else f"{text}." for text in map(written, stiffness))
 
 
 def stable(beam: Beam) -> bool:
