@@ -95,8 +95,8 @@ class Held(NamedTuple):
     moments: tuple[float, ...]
 
 
-def loading(mark: str, row: Row, G: float, Q: float) -> Loading:
-    """Return what acts on a beam when the case G is taken `G` times, the case Q `Q` times."""
+def loading(mark: str, row: Row, G: float, Q: float, S: float, T: float) -> Loading:
+    """Return what acts on a beam when each of its cases is taken so many times."""
     permanent = Spread(0.0, row.length, row.g, row.g)
     variable = Spread(0.0, row.length, row.q, row.q)
     if mark == "B10":
@@ -113,8 +113,8 @@ def loading(mark: str, row: Row, G: float, Q: float) -> Loading:
         tuple(spreads),
         (Force(row.at, force),) if force else (),
         (Force(row.at, Q * row.other),) if mark == "B14" else (),
-        G * row.other / 1000 if mark == "B9" else 0.0,
-        Q * row.other if mark == "B17" else 0.0,
+        S * row.other / 1000 if mark == "B9" else 0.0,
+        T * row.other if mark == "B17" else 0.0,
     )
 
 
@@ -259,9 +259,9 @@ class Answer:
     deflection: float
 
 
-def worked(mark: str, row: Row, G: float, Q: float) -> Answer:
+def worked(mark: str, row: Row, G: float, Q: float, S: float, T: float) -> Answer:
     """Return everything about a beam: reactions by its closed form, then moments, then deflections."""
-    load = loading(mark, row, G, Q)
+    load = loading(mark, row, G, Q, S, T)
     held = FORMS[mark](row, load)
     at = [row.nodes[node] for node in SUPPORTS[mark]]
     jumps = {*row.nodes, *at, *(f.x for f in load.forces + load.couples)}

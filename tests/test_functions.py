@@ -188,7 +188,8 @@ def test_sentences_say_what_was_understood() -> None:
         "G: varying 1 to 3 in span 2; couple -2 at 1; settle 0.01 at support 2; rotate 0.1 at support 1; curvature 0.2",
     ) == (
         "5 loads: G: distributed 1 to 3 from x = 4 to 8; clockwise couple -2 at x = 1; support 2 sinks by 0.01;"
-        " support 1 turns clockwise by 0.1; free curvature 0.2 (sagging positive) from x = 0 to 8; in all 8 downward, before any factors."
+        " support 1 turns clockwise by 0.1; free curvature 0.2 (sagging positive) from x = 0 to 8;"
+        " in all 8 downward, before any factors."
     )
 
 

@@ -11,7 +11,7 @@ from datetime import date
 from pathlib import Path
 
 from openpyxl import Workbook
-from sheets import foundations, in_depth, notes, schedule, understood
+from sheets import foundations, in_depth, notes, paper, schedule, understood
 from sheets.design import Design, LaidOut, Member, Pad
 from sheets.paper import TitleBlock
 
@@ -78,7 +78,7 @@ MEMBERS = (
         33,
         213_000,
         {"g": 6.0, "q": 2.0, "gp": 18.0, "qp": 60.0, "at": 1.8},
-        ("P5", "P6"),
+        ("P5", "P9"),
         '=beam_line("fixed",{L1},"fixed")',
         AREA + "&" + POINTS,
         limit=500,
@@ -115,7 +115,7 @@ MEMBERS = (
         12,
         36_000,
         {"g": 1.2, "q": 3.0},
-        ("P6", "P8", "P7"),
+        ("P6", "P10", "P7"),
         '=beam_line("pinned",{L1},"spring(",{other},")",{L2},"pinned")',
         AREA,
         (2_400, "kN/m spring"),
@@ -131,7 +131,7 @@ MEMBERS = (
         {"g": 11.0, "q": 10.0},
         ("P4", "P8", "P5"),
         '=beam_line("pinned",{L1},"roller",{L2},"roller")',
-        '=load_line("G: udl",{g},"; Q: udl",{q},"; G: settle",{other}/1000,"at support 2")',
+        '=load_line("G: udl",{g},"; Q: udl",{q},"; S: settle",{other}/1000,"at support 2")',
         (6, "mm settlement"),
         "=MAX({L1},{L2})",
     ),
@@ -142,7 +142,7 @@ MEMBERS = (
         210,
         16_500,
         {"g": 4.0, "q": 18.0, "from": 2.7, "to": "={L1}"},
-        ("P5", "P8"),
+        ("P5", "P6"),
         '=beam_line("fixed",{L1},"pinned")',
         '=load_line("G: udl",{g},"; Q: udl",{q},"from",{from},"to",{to})',
     ),
@@ -153,7 +153,7 @@ MEMBERS = (
         210,
         2_700,
         {"g": 1.0, "q": 2.5, "qp": 4.0, "at": "={L1}"},
-        ("P7",),
+        ("P9",),
         '="fixed "&{L1}&" free"',
         AREA + '&"; Q: point "&{qp}&" at "&{at}',
         reference="=2*{L1}",
@@ -192,7 +192,7 @@ MEMBERS = (
         210,
         3_800,
         {"g": 1.5, "at": 1.5},
-        ("P4", "P8"),
+        ("P4", "P2"),
         '="pinned "&{L1}&" roller"',
         '="G: udl "&{g}&"; Q: couple "&{other}&" at "&{at}',
         (18, "kNm couple"),
@@ -231,7 +231,7 @@ MEMBERS = (
         {"g": 5.5, "q": 4.0},
         ("P5", "P6"),
         '=beam_line("fixed",{L1},"pinned")',
-        '=load_line("Q: curvature",{other},"; G: udl",{g},"; Q: udl",{q})',
+        '=load_line("T: curvature",{other},"; G: udl",{g},"; Q: udl",{q})',
         (-0.0006, "1/m curvature"),
     ),
     Member(
@@ -241,7 +241,7 @@ MEMBERS = (
         210,
         12_500,
         {"g": 3.0, "q": 7.5},
-        ("P8", "P7"),
+        ("P9", "P7"),
         '="fixed "&{L1}&" hinge "&{L2}&" pinned"',
         AREA,
         reference="={L1}+{L2}",
@@ -264,7 +264,7 @@ RUNWAY = LaidOut(
         ("point", 45, None, None, None, 3, 1, None, "Q"),
         ("point", 12, None, None, None, 0, None, None, "Q"),
         ("couple", 10, None, None, None, 2, 3, None, "G"),
-        ("settle", 0.004, None, None, None, None, None, 3, "G"),
+        ("settle", "={B9}/1000", None, None, None, None, None, 3, "S"),
     ),
     ("P6", "P7", "P8", "P9"),
 )
@@ -280,7 +280,8 @@ PADS = (
     Pad("P6", 200, 0.5),
     Pad("P7", 125, 0.4),
     Pad("P8", 100, 0.5),
-    Pad("P9", 200, 0.4),
+    Pad("P9", 200, 0.5),
+    Pad("P10", 100, 0.4),
 )
 
 # The words ----------------------------------------------------------------------------------------
@@ -297,14 +298,19 @@ FOOTNOTES = (
         "built-in supports are on sheet Foundations.",
     ),
     (
+        "Cases",
+        "G permanent, with self weight; Q variable, on all spans at once; S settlement; T temperature. Factors and "
+        "combinations are the user's: type them above. “case?” there: a case counts 0, or is none of the four.",
+    ),
+    (
         "Loads",
-        "Self weight is in G. Q acts on all spans at once. The settlement of B9 counts as permanent, "
-        "the warming of B17 as variable. The load of B13 grows from 0 at the left to the value given.",
+        "Pad P8 settles: once, under B9 and B19 alike. The top of B17 warms. The load of B13 grows from 0 at the "
+        "left to the value given.",
     ),
     (
         "Deflection",
         "δ max is the largest of the whole beam, up or down. L is the span, or twice the overhang "
-        "where that is less; for B8 and B18 the whole length.",
+        "where that is less; for B8 and B18 the whole length. An error counts as not met.",
     ),
     (
         "Cautions",
@@ -312,10 +318,14 @@ FOOTNOTES = (
         "engineer decide. What is left out stands on sheet Notes.",
     ),
 )
-PAD_NOTES = (
-    "Area = (G + Q) / (pressure allowed − own weight of the pad). The side is rounded up to 0.1 m.",
-    "Fixing moments are taken by the walls above the pads; they are not counted in the areas.",
-    "Negative reactions hold the beam down. Blinding, formwork, steel and excavation: not measured.",
+LOAD_NOTES = (
+    "max: G + Q, with S and T where they add; min: G, with Q, S and T where they relieve; Nd: at strength.",
+    "Σ|M| adds the fixing moments of all beams and cases without signs: an upper bound. See the sizes.",
+    "Q acts on all spans at once. Not counted: pad weight, horizontal loads. Verify before use.",
+)
+SIZE_NOTES = (
+    "Square pad, N max, e = Σ|M| / N: side b from b (b − 2e) = area, rounded up to 0.1 m; by hand where e > b/6.",
+    "A negative N min holds the beam down. Blinding, formwork, steel and excavation: not measured.",
 )
 SIGNS = (
     ("Load, deflection", "positive downward; so is the settlement of a support"),
@@ -340,7 +350,7 @@ NOTATION = (
         "udl, varying, point, couple, settle (a support), rotate (a support), curvature (imposed, by "
         "warming for example)",
     ),
-    ("Combination", "1.35 G + 1.5 Q; a case that is not named counts 0"),
+    ("Combination", "1.35 G + 1.5 Q + S + T; a case that is not named counts 0"),
     ("Stiffness", "EI = E [GPa] × I [cm⁴] / 100 in kNm²; one number, or one a length"),
     (
         "Decimal comma",
@@ -357,12 +367,14 @@ BASIS = (
     ("Units", "kN, m, kNm, kNm² throughout the formulas; deflections are shown in mm"),
     (
         "Combinations",
-        "strength and characteristic stand once, on sheet Schedule; 1 G and 1 Q apart on sheet Foundations",
+        "strength and characteristic stand once, on sheet Schedule, where the factors read from them are "
+        "shown; G, Q, S and T apart on sheet Foundations",
     ),
 )
 CAUTIONS = (
     ("Verify", "check every result independently before relying on it; it is as good as its inputs"),
     ("Decide", "local codes and a licensed engineer decide; factors, limits and pressures are examples"),
+    ("Settlement, warming", "may relieve as well as load: highest and lowest are given with and without S and T"),
     ("Theory", "linear elastic material, small deflections, plane sections, bending only"),
     ("Variable load", "acts on all spans at once; look for the least favourable pattern of loaded spans"),
     ("Error values", "a function that cannot answer shows an error value, never a guess; the fault column says why"),
@@ -373,10 +385,11 @@ LEFT_OUT = (
     ("Time, motion", "creep, shrinkage, cracking, fatigue, vibration, impact, moving loads"),
     ("Resistance", "strength of sections, connections, bearings and ground; punching, reinforcement of the pads"),
     ("Self weight", "counted only where it is entered in G"),
-    ("Uplift", "least reactions with a favourable G are not searched for; check what must be held down"),
+    ("Uplift", "the lowest loads of the pads take the load of all spans at once; check what must be held down"),
 )
 SURVEYOR = (
-    ("Pads", "sheet Foundations, right-hand table: side, depth and concrete of each pad"),
+    ("Pads", "sheet Foundations, table of sizes: side, depth and concrete of each pad"),
+    ("By hand", "a pad marked “moment: design by hand” has no size yet, and is in no sum"),
     ("Changes", "when a span or a load changes, so do the pads: note the revision that was measured"),
 )
 NOTES = (
@@ -397,10 +410,11 @@ DESIGN = Design(
     MEMBERS,
     RUNWAY,
     PADS,
-    "1.35 G + 1.5 Q",
-    "G + Q",
+    "1.35 G + 1.5 Q + S + T",
+    "G + Q + S + T",
     FOOTNOTES,
-    PAD_NOTES,
+    LOAD_NOTES,
+    SIZE_NOTES,
     NOTES,
 )
 
@@ -411,8 +425,12 @@ def build() -> Workbook:
     """Return the workbook, its formulas not yet computed."""
     book = Workbook()
     del book[book.sheetnames[0]]
+    paper.measure_in_digits_of_the_face(book)
     book.properties.title = f"{DESIGN.issue.project}: beam schedule"
     book.properties.creator = "beamfuncs example"
+    # The values of a filled copy are shown as they stand, also where the functions are not installed.
+    book.calculation.fullCalcOnLoad = False
+    book.calculation.calcId = 191029
     for sheet in SHEETS:
         sheet.draw(book.create_sheet(sheet.NAME), DESIGN)
     return book

@@ -14,10 +14,13 @@ class Called:
     line: str
     loads: str
     stiffness: str
-    lengths: str
     pads: tuple[str, ...]
 
-    def ask(self, function: str, combination: str, wanted: str | None = None) -> str:
-        """Return the formula that asks `function` for what is `wanted` of this beam."""
+    def ask(self, function: str, combination: str | None, wanted: str | None = None) -> str:
+        """Return the formula that asks `function` for what is `wanted` of this beam; no combination: all loads."""
         parts = [self.line, self.loads, wanted, self.stiffness, combination]
         return f"={function}({','.join(part for part in parts if part is not None)})"
+
+    def length(self) -> str:
+        """Return the formula of the length: the total of a unit load over the whole beam."""
+        return f'=beam_result({self.line},"udl 1","total load",{self.stiffness})'

@@ -28,7 +28,10 @@ class Member:
 
 @dataclass(frozen=True)
 class LaidOut:
-    """A beam laid out over a row of cells, with one stiffness a length and its loads in a table."""
+    """A beam laid out over a row of cells, with one stiffness a length and its loads in a table.
+
+    In a formula of the table a mark in braces is the cell `Other` of that beam in the schedule.
+    """
 
     mark: str
     where: str
@@ -62,5 +65,6 @@ class Design:
     strength: str
     characteristic: str
     footnotes: Words
-    pad_notes: tuple[str, ...]
+    load_notes: tuple[str, ...]
+    size_notes: tuple[str, ...]
     notes: tuple[tuple[tuple[str, Words], ...], ...]

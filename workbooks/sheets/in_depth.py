@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 from openpyxl.chart import Reference, ScatterChart, Series
 from openpyxl.chart.axis import ChartLines
 from openpyxl.chart.shapes import GraphicalProperties
@@ -47,11 +49,19 @@ PHRASES = (
     ("deflection min", "m", "0.0000"),
     ("total load", "kN", "0.0"),
 )
-STATION = 27
+STATION = 26
 """The row of the first station."""
-STEPS = 31
-"""The number of equal steps between the stations."""
-
+POINTS = 21
+"""The number of evenly spaced stations; the functions add marks, load ends and both sides of every jump."""
+STATIONS = 38
+"""The rows that the stations may take."""
+SHEAR, MOMENT, DEFLECTION = "BCD"
+"""The columns of the stations that are drawn."""
+CHARTS = (
+    (("G38", 34.6, 6.4), "Shear [kN], strength, against x [m]", SHEAR, paper.HARBOUR),
+    (("G51", 34.6, 6.4), "Moment [kNm], strength, sagging downward, against x [m]", MOMENT, paper.HARBOUR),
+    (("L23", 20, 8.2), "Deflection [mm], characteristic, against x [m]", DEFLECTION, paper.ALARM),
+)
 
 STRENGTH, CHARACTERISTIC = (schedule.combination(kind) for kind in schedule.COMBINATIONS)
 
@@ -65,7 +75,6 @@ def cells_of(beam: LaidOut, sheet: str = "") -> Called:
         line=f"{sheet}$B$7:${last}$7",
         loads=f"{sheet}$A${TABLE - 1}:$I${TABLE + LOAD_ROWS - 1}",
         stiffness=f"{sheet}$B$8:${last}$8",
-        lengths=f"{sheet}$B$7:${last}$7",
         pads=tuple(f"{sheet}$P${TABLE + i}" for i, _ in enumerate(beam.pads)),
     )
 
@@ -81,18 +90,21 @@ def draw(sheet: Worksheet, design: Design) -> None:
         left="A:I",
         block=("K:L", "M:N", "O:P", "Q:R"),
     )
-    paper.widths(sheet, [11] * 18)
-    paper.heights(sheet, {4: 8, 6: 16, 7: 18, 8: 16, 9: 8, 11: 24, 22: 8})
+    paper.widths(sheet, [13.5] * 18)
+    last = STATION + STATIONS - 1
+    paper.heights(sheet, dict.fromkeys(range(TABLE, STATION), 16))
+    paper.heights(sheet, dict.fromkeys(range(STATION, last + 1), 14.8))
+    paper.heights(sheet, {4: 8, 5: 18, 6: 17, 7: 19, 8: 17, 9: 8, 10: 18, 11: 34, 12: 18, 22: 8, 23: 18, 24: 34})
     called = cells_of(beam)
     _line(sheet, beam, called)
-    _loads(sheet, beam)
+    _loads(sheet, design)
     _supports(sheet, beam, called)
     _phrases(sheet, called)
     _stations(sheet, called)
-    _diagram(sheet, ("L23", 16, 8), "Deflection [mm], characteristic, against x [m]", "E", paper.ALARM)
-    _diagram(sheet, ("G39", 26, 9), "Moment [kNm], strength, sagging downward, against x [m]", "C", paper.HARBOUR)
+    for place, title, column, ink in CHARTS:
+        _diagram(sheet, place, title, column, ink)
     sheet.freeze_panes = "A5"
-    paper.page(sheet, f"A1:R{STATION + STEPS}", design.issue.footer)
+    paper.page(sheet, f"A1:R{last}", design.issue.footer)
 
 
 def _line(sheet: Worksheet, beam: LaidOut, called: Called) -> None:
@@ -114,11 +126,16 @@ def _line(sheet: Worksheet, beam: LaidOut, called: Called) -> None:
             paper.put(sheet, f"{letter}7", part, paper.given("0.00"))
             paper.put(sheet, f"{letter}8", next(stiffness), paper.given("#,##0"))
     paper.put(sheet, "N6:O6", "Total length [m]", paper.FOUND_HEAD)
-    paper.put(sheet, "N7:O7", f"=SUM({called.line})", paper.found("0.00", bold=True))
+    paper.put(sheet, "N7:O7", called.length(), paper.found("0.00", bold=True))
 
 
-def _loads(sheet: Worksheet, beam: LaidOut) -> None:
+def _loads(sheet: Worksheet, design: Design) -> None:
     """Write the load table: the header row that the functions know, the units above it."""
+    beam = design.laid_out
+    others = {
+        member.mark: f"{schedule.NAME}!{schedule.cells_of(row)['other']}"
+        for row, member in enumerate(design.members, schedule.FIRST)
+    }
     paper.put(sheet, "A10:I10", "Its loads, one a row; blank rows are skipped", paper.SECTION)
     for column, (header, unit) in enumerate(LOAD_HEADERS, 1):
         letter = get_column_letter(column)
@@ -129,6 +146,8 @@ def _loads(sheet: Worksheet, beam: LaidOut) -> None:
         entries += [None] * (LOAD_ROWS - len(entries))
         for row, entry in enumerate(entries, TABLE):
             look = paper.INPUT_TEXT if word else paper.given("General")
+            if isinstance(entry, str) and entry.startswith("="):
+                entry, look = entry.format(**others), paper.found("General")
             paper.put(sheet, f"{letter}{row}", entry, look)
 
 
@@ -164,10 +183,11 @@ def _supports(sheet: Worksheet, beam: LaidOut, called: Called) -> None:
         paper.put(sheet, f"{letter}{last + 2}", load, total)
         difference = f"=ROUND({letter}{last + 1}-{letter}{last + 2},9)"
         paper.put(sheet, f"{letter}{last + 3}", difference, nothing)
+        paper.alarm_unless_nothing(sheet, f"{letter}{last + 3}")
     paper.put(sheet, f"K{last + 4}:L{last + 4}", "Fault (blank: none)", paper.BLOCK_LABEL)
     fault = f"M{last + 4}:R{last + 4}"
     paper.put(sheet, fault, called.ask("fault", STRENGTH), paper.FAULT)
-    paper.alarm_when(sheet, fault, f"LEN($M${last + 4})>0")
+    paper.alarm_when(sheet, fault, f"IF(ISERROR($M${last + 4}),TRUE,LEN($M${last + 4})>0)")
 
 
 def _phrases(sheet: Worksheet, called: Called) -> None:
@@ -177,9 +197,9 @@ def _phrases(sheet: Worksheet, called: Called) -> None:
     last = PHRASE + len(PHRASES) - 1
     asked = f"$G${PHRASE}:$G${last}"
     for row, (phrase, unit, digits) in enumerate(PHRASES, PHRASE):
-        paper.put(sheet, f"G{row}:H{row}", phrase, paper.INPUT_PHRASE)
+        paper.put(sheet, f"G{row}:H{row}", phrase, replace(paper.INPUT_PHRASE, size=11))
         for letter in "IJ":
-            paper.put(sheet, f"{letter}{row}", None, paper.found(f'{digits}" {unit}"'))
+            paper.put(sheet, f"{letter}{row}", None, replace(paper.found(f'{digits}" {unit}"'), size=11))
     for letter, head, combination in (
         ("I", "strength", STRENGTH),
         ("J", "characteristic", CHARACTERISTIC),
@@ -190,38 +210,41 @@ def _phrases(sheet: Worksheet, called: Called) -> None:
 
 
 def _stations(sheet: Worksheet, called: Called) -> None:
-    """Write shear, moment and deflection over a column of stations."""
-    paper.put(sheet, "A23:E23", "Along the beam (array formulas on x)", paper.SECTION)
+    """Write shear and moment as `diagram` tabulates them, and the deflection at its places.
+
+    The table has rows to spare, which repeat the right end.
+    """
+    heading = "Along the beam (both sides of every jump)"
+    paper.put(sheet, "A23:E23", heading, paper.SECTION)
     columns = (
         ("A", "x", "m", "0.00"),
-        ("B", "Shear V, strength", "kN", "0.0"),
-        ("C", "Moment M, strength", "kNm", "0.0"),
-        ("D", "Deflection δ, charact.", "m", "0.00000"),
-        ("E", "Deflection δ, charact.", "mm", "0.0"),
+        ("B", "Shear, strength", "kN", "0.0"),
+        ("C", "Moment, strength", "kNm", "0.0"),
+        ("D", "Deflection, charact.", "mm", "0.00"),
     )
-    last = STATION + STEPS
+    last = STATION + STATIONS - 1
     for letter, head, unit, digits in columns:
-        paper.put(sheet, f"{letter}24:{letter}{STATION - 2}", head, paper.FOUND_HEAD)
-        paper.put(sheet, f"{letter}{STATION - 1}", unit, paper.UNIT)
+        paper.put(sheet, f"{letter}24", head, paper.FOUND_HEAD)
+        paper.put(sheet, f"{letter}25", unit, paper.UNIT)
         for row in range(STATION, last + 1):
-            paper.put(sheet, f"{letter}{row}", None, paper.found(digits))
+            paper.put(sheet, f"{letter}{row}", None, replace(paper.found(digits), size=11))
+    paper.put(sheet, "E24", "Rows needed", paper.FOUND_HEAD)
+    table = called.ask("diagram", STRENGTH, str(POINTS)).removeprefix("=")
+    paper.put(sheet, "E25", f"=ROWS({table})", paper.COUNT)
+    paper.alarm_when(sheet, "E25", f"IF(ISERROR($E$25),TRUE,$E$25>{STATIONS})")
     for row in range(STATION, last + 1):
-        sheet[f"A{row}"] = f"=$N$7*{row - STATION}/{STEPS}"
-        sheet[f"E{row}"] = f"=1000*D{row}"
-    x = f"$A${STATION}:$A${last}"
-    for letter, function, combination in (
-        ("B", "shear_at", STRENGTH),
-        ("C", "moment_at", STRENGTH),
-        ("D", "deflection_at", CHARACTERISTIC),
-    ):
-        block = f"{letter}{STATION}:{letter}{last}"
-        paper.array(sheet, block, called.ask(function, combination, x))
+        station = f"MIN({row - STATION + 1},$E$25)"
+        for number, letter in enumerate("ABC", 1):
+            sheet[f"{letter}{row}"] = f"=INDEX({table},{station},{number})"
+        deflection = called.ask("deflection_at", CHARACTERISTIC, f"$A{row}").removeprefix("=")
+        sheet[f"D{row}"] = f"=1000*{deflection}"
+    paper.fade_when(sheet, f"A{STATION}:D{last}", f"ROW()-{STATION - 1}>$E$25")
 
 
-def _diagram(sheet: Worksheet, place: tuple[str, int, int], title: str, column: str, ink: str) -> None:
-    """Draw one column of the stations against x, downward positive."""
+def _diagram(sheet: Worksheet, place: tuple[str, float, float], title: str, column: str, ink: str) -> None:
+    """Draw one column of the stations against x; moments and deflections downward, shears upward."""
     number = ord(column) - ord("A") + 1
-    y, x = (Reference(sheet, each, STATION, each, STATION + STEPS) for each in (number, 1))
+    y, x = (Reference(sheet, each, STATION, each, STATION + STATIONS - 1) for each in (number, 1))
     series = Series(y, x, title=title)
     series.marker.symbol = "none"
     series.smooth = False
@@ -231,14 +254,15 @@ def _diagram(sheet: Worksheet, place: tuple[str, int, int], title: str, column: 
     chart.series.append(series)
     chart.legend = None
     chart.title = _heading(title)
-    chart.y_axis.scaling.orientation = "maxMin"
+    if column != SHEAR:
+        chart.y_axis.scaling.orientation = "maxMin"
     chart.x_axis.delete = chart.y_axis.delete = False
-    chart.x_axis.tickLblPos = "high"
+    chart.x_axis.tickLblPos = "low" if column == SHEAR else "high"
     chart.roundedCorners = False
     for axis in (chart.x_axis, chart.y_axis):
         axis.majorGridlines = ChartLines(GraphicalProperties(ln=LineProperties(solidFill=paper.PALE)))
     chart.x_axis.number_format = chart.y_axis.number_format = "0"
-    anchor, chart.width, chart.height = place
+    anchor, chart.width, chart.height = place  # type: ignore[assignment]
     sheet.add_chart(chart, anchor)
 
 

@@ -11,7 +11,7 @@ NAME = "Notes"
 FIRST = 5
 SIDES = (("A", "B"), ("D", "E:H"))
 """The columns of the words and of the texts, on the left and on the right."""
-ONE_LINE = 104
+ONE_LINE = 90
 """The most characters that a line of text holds."""
 
 
@@ -25,7 +25,7 @@ def draw(sheet: Worksheet, design: Design) -> None:
         left="A:B",
         block=("E", "F", "G", "H"),
     )
-    paper.widths(sheet, (24, 82, 3, 20, 14, 32, 14, 22))
+    paper.widths(sheet, (23, 82, 3, 23, 14, 32, 14, 22))
     paper.heights(sheet, {4: 8})
     bottom = FIRST
     for (words, texts), sections in zip(SIDES, design.notes, strict=True):
@@ -36,7 +36,7 @@ def draw(sheet: Worksheet, design: Design) -> None:
                 row += 1
                 paper.put(sheet, f"{words}{row}", word, paper.STRONG_PROSE)
                 paper.put(sheet, paper.in_row(texts, row), text, paper.PROSE)
-                height = 5 + 13 * -(-len(text) // ONE_LINE)
+                height = 7 + 16 * -(-len(text) // ONE_LINE)
                 others = sheet.row_dimensions[row].height or 0
                 sheet.row_dimensions[row].height = max(others, height)
             bottom = max(bottom, row)

@@ -5,7 +5,9 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import date
+from typing import Literal
 
+from openpyxl import Workbook
 from openpyxl.formatting.rule import Rule
 from openpyxl.styles import Alignment, Border, Font, PatternFill, Side
 from openpyxl.styles.differential import DifferentialStyle
@@ -26,6 +28,7 @@ DRIFTWOOD = "7A6A4F"
 SAND = "FFF6DF"
 MIST = "EEF2F4"
 PALE = "D5DBDF"
+HATCH = "AEB8BF"
 WHITE = "FFFFFF"
 MOSS = "2E6B3E"
 ALARM = "A63D2F"
@@ -42,55 +45,65 @@ BOX = Border(left=THIN, right=THIN, top=THIN, bottom=THIN)
 class Look:
     """How one kind of cell is drawn."""
 
-    size: float = 10
+    size: float = 12
     bold: bool = False
     italic: bool = False
     ink: str = INK
     fill: str | None = None
+    pattern: Literal["solid", "lightUp"] = "solid"
     across: str = "left"
     down: str = "center"
     wrap: bool = False
+    shrink: bool = False
     indent: int = 0
     border: Border | None = GRID
     number: str = "General"
 
 
-PROJECT = Look(size=18, bold=True, ink=HARBOUR, border=None)
-TITLE = Look(size=12, bold=True, border=None)
+PROJECT = Look(size=20, bold=True, ink=HARBOUR, border=None)
+TITLE = Look(size=14, bold=True, border=None)
 SUBTITLE = Look(italic=True, ink=QUIET, border=None)
-SECTION = Look(size=10, bold=True, ink=HARBOUR, border=Border(bottom=FIRM))
+LEGEND = Look(size=11, italic=True, ink=QUIET, indent=1, border=None)
+SECTION = Look(bold=True, ink=HARBOUR, border=Border(bottom=FIRM))
 PROSE = Look(wrap=True, border=None)
 STRONG_PROSE = Look(bold=True, wrap=True, border=None)
-BLOCK_LABEL = Look(size=9, ink=QUIET, fill=MIST, indent=1, border=BOX)
+BLOCK_LABEL = Look(size=11, ink=QUIET, fill=MIST, indent=1, border=BOX)
 BLOCK_VALUE = Look(bold=True, indent=1, border=BOX)
 BLOCK_DATE = Look(bold=True, indent=1, border=BOX, number="d mmmm yyyy")
-GIVEN_HEAD = Look(size=9, bold=True, ink=WHITE, fill=DRIFTWOOD, across="center", wrap=True, border=BOX)
-FOUND_HEAD = Look(size=9, bold=True, ink=WHITE, fill=HARBOUR, across="center", wrap=True, border=BOX)
-UNIT = Look(size=9, italic=True, ink=QUIET, fill=MIST, across="center", border=BOX)
+GIVEN_HEAD = Look(size=11, bold=True, ink=WHITE, fill=DRIFTWOOD, across="center", wrap=True, border=BOX)
+FOUND_HEAD = Look(size=11, bold=True, ink=WHITE, fill=HARBOUR, across="center", wrap=True, border=BOX)
+UNIT = Look(size=11, italic=True, ink=QUIET, fill=MIST, across="center", wrap=True, border=BOX)
 MARK = Look(bold=True, across="center")
 TEXT = Look(wrap=True, indent=1)
-SMALL_TEXT = Look(size=9, wrap=True, indent=1)
-ONE_LINE = Look(size=9, indent=1)
-LINE_TEXT = Look(size=9, fill=MIST, wrap=True, indent=1)
+SMALL_TEXT = Look(size=11, wrap=True, indent=1)
+ONE_LINE = Look(size=11, indent=1)
+LINE_TEXT = Look(size=11, fill=MIST, wrap=True, indent=1)
 COUNT = Look(across="center", number="0")
 SUM_MARK = Look(bold=True, fill=MIST, across="center")
 INPUT_TEXT = Look(fill=SAND, across="center")
 INPUT_PHRASE = Look(fill=SAND, indent=1)
 ABSENT = Look(ink=QUIET, across="center")
-STATUS = Look(bold=True, across="center")
-FAULT = Look(size=8, ink=ALARM, wrap=True, indent=1)
+NOT_USED = Look(ink=QUIET, fill=HATCH, pattern="lightUp", across="center")
+FOOTNOTE = Look(size=11, italic=True, ink=QUIET, indent=1, border=None)
+STATUS = Look(bold=True, across="center", shrink=True)
+FAULT = Look(size=10, ink=ALARM, down="top", wrap=True)
 NOTHING = "0.000;-0.000;0.000"
 """The number format of a difference that should be nothing."""
 
 
 def given(number: str) -> Look:
     """Return the look of a number the engineer types."""
-    return Look(fill=SAND, across="right", number=number)
+    return Look(fill=SAND, across="right", number=_off_the_edge(number))
 
 
 def found(number: str, *, bold: bool = False, fill: str | None = None) -> Look:
     """Return the look of a number a formula finds."""
-    return Look(across="right", number=number, bold=bold, fill=fill)
+    return Look(across="right", number=_off_the_edge(number), bold=bold, fill=fill, shrink=True)
+
+
+def _off_the_edge(number: str) -> str:
+    """Return a number format that leaves the width of a bracket free at the right."""
+    return ";".join(f"{part}_)" for part in number.split(";"))
 
 
 def put(sheet: Worksheet, cell: str, value: Value, look: Look, *, merged: bool = True) -> None:
@@ -102,11 +115,15 @@ def put(sheet: Worksheet, cell: str, value: Value, look: Look, *, merged: bool =
         for each in row:
             each.font = Font(name=FACE, size=look.size, bold=look.bold, italic=look.italic, color=look.ink)
             each.alignment = Alignment(
-                horizontal=look.across, vertical=look.down, wrap_text=look.wrap, indent=look.indent
+                horizontal=look.across,
+                vertical=look.down,
+                wrap_text=look.wrap,
+                shrink_to_fit=look.shrink,
+                indent=look.indent,
             )
             each.number_format = look.number
             if look.fill:
-                each.fill = PatternFill("solid", fgColor=look.fill)
+                each.fill = PatternFill(look.pattern, fgColor=look.fill)
             if look.border:
                 each.border = look.border
     if ":" in cell and merged:
@@ -116,6 +133,11 @@ def put(sheet: Worksheet, cell: str, value: Value, look: Look, *, merged: bool =
 def array(sheet: Worksheet, block: str, formula: str) -> None:
     """Write one array formula over `block`, whose cells keep their looks."""
     sheet[block.split(":")[0]] = ArrayFormula(block, formula)
+
+
+def measure_in_digits_of_the_face(book: Workbook) -> None:
+    """Let the widths of columns count digits of the face used here: they count those of the style Normal."""
+    book._named_styles["Normal"].font = Font(name=FACE, size=11)  # type: ignore[attr-defined]
 
 
 def widths(sheet: Worksheet, sizes: Iterable[float]) -> None:
@@ -171,7 +193,7 @@ class TitleBlock:
                 put(sheet, in_row(names, row), label, BLOCK_LABEL)
                 look = BLOCK_DATE if isinstance(value, date) else BLOCK_VALUE
                 put(sheet, in_row(values, row), value, look)
-        heights(sheet, {1: 26, 2: 20, 3: 18})
+        heights(sheet, {1: 28, 2: 22, 3: 20})
 
 
 def in_row(columns: str, row: int) -> str:
@@ -205,7 +227,7 @@ def page(sheet: Worksheet, area: str, footer: str, titles: str | None = None) ->
 
 
 def allow(sheet: Worksheet, cells: str, rule: DataValidation, message: str) -> None:
-    """Let only what `rule` accepts into `cells`, and say why another entry is refused."""
+    """Let only what `rule` accepts into `cells`, parted by blanks, and say why another entry is refused."""
     rule.error, rule.errorTitle = message, "Not accepted"
     rule.showErrorMessage = True
     sheet.add_data_validation(rule)
@@ -228,8 +250,25 @@ def one_of(words: Iterable[str]) -> DataValidation:
     return DataValidation(type="list", formula1=f'"{",".join(words)}"', allow_blank=True)
 
 
+def nothing() -> DataValidation:
+    """Return the rule that refuses every entry."""
+    return DataValidation(type="custom", formula1="FALSE", allow_blank=True)
+
+
+def alarm_unless_nothing(sheet: Worksheet, cells: str) -> None:
+    """Colour those of `cells` that hold another number than 0, or an error."""
+    first = cells.split(":")[0]
+    alarm_when(sheet, cells, f"IF(ISERROR({first}),TRUE,ABS({first})>0.001)")
+
+
 def alarm_when(sheet: Worksheet, cells: str, condition: str) -> None:
     """Colour `cells` where `condition`, written for the first of them, is true."""
     alarm = DifferentialStyle(font=Font(color=ALARM), fill=PatternFill("solid", bgColor=BLUSH))
     rule = Rule(type="expression", formula=[condition], dxf=alarm)
     sheet.conditional_formatting.add(cells, rule)
+
+
+def fade_when(sheet: Worksheet, cells: str, condition: str) -> None:
+    """Write white on white in `cells` where `condition`, written for the first of them, is true."""
+    faded = DifferentialStyle(font=Font(color=WHITE))
+    sheet.conditional_formatting.add(cells, Rule(type="expression", formula=[condition], dxf=faded))

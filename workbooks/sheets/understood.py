@@ -11,14 +11,18 @@ from sheets.design import Design
 NAME = "As understood"
 FIRST = 7
 """The row of the first beam."""
+LOADS = dict(zip(schedule.CASES, "EFGH", strict=True))
+"""The columns of the total loads by case."""
+ALL = "I"
+"""The column of the total load in whatever case."""
 HEADS = (
     ("A", "Beam", ""),
     ("B", "The beam", "m, kNm²"),
     ("C", "Its loads", "kN, m, kNm"),
     ("D", "Length", "m"),
-    ("E", "Total load, 1 G", "kN"),
-    ("F", "Total load, 1 Q", "kN"),
-    ("G:H", "Fault (blank: none)", ""),
+    *((letter, f"Load, {case}", "kN") for case, letter in LOADS.items()),
+    (ALL, "Load, all cases", "kN"),
+    ("J", "Fault (blank: none)", ""),
 )
 
 
@@ -34,7 +38,6 @@ def every_beam(design: Design) -> list[Called]:
                 line=cells["line"],
                 loads=cells["loads"],
                 stiffness=cells["EI"],
-                lengths=f"{cells['L1']}:{schedule.cells_of(row)['L3']}",
                 pads=tuple(cells[f"pad{i}"] for i, _ in enumerate(member.pads, 1)),
             )
         )
@@ -49,10 +52,10 @@ def draw(sheet: Worksheet, design: Design) -> None:
         NAME,
         "What the functions read. Compare these sentences with the drawings before using numbers.",
         left="A:B",
-        block=("D", "E:F", "G", "H"),
+        block=("D:E", "F:H", "I", "J"),
     )
-    paper.widths(sheet, (7, 82, 64, 11, 12, 12, 14, 14))
-    paper.heights(sheet, {4: 8, 5: 28, 6: 14})
+    paper.widths(sheet, (7, 75, 72, 8.5, 8.5, 8.5, 8.5, 8.5, 11, 18))
+    paper.heights(sheet, {4: 8, 5: 34, 6: 17})
     for columns, head, unit in HEADS:
         paper.put(sheet, paper.in_row(columns, 5), head, paper.FOUND_HEAD)
         paper.put(sheet, paper.in_row(columns, 6), unit, paper.UNIT)
@@ -60,15 +63,19 @@ def draw(sheet: Worksheet, design: Design) -> None:
     last = FIRST + len(beams) - 1
     for row, beam in enumerate(beams, FIRST):
         paper.put(sheet, f"A{row}", f"={beam.mark}", paper.MARK)
-        paper.put(sheet, f"B{row}", f"=beam_reads({beam.line},{beam.stiffness})", paper.TEXT)
-        paper.put(sheet, f"C{row}", f"=loads_read({beam.line},{beam.loads})", paper.TEXT)
-        paper.put(sheet, f"D{row}", f"=SUM({beam.lengths})", paper.found("0.00"))
-        for letter, case in (("E", '"1 G"'), ("F", '"1 Q"')):
-            total = beam.ask("beam_result", case, '"total load"')
+        paper.put(sheet, f"B{row}", f"=beam_reads({beam.line},{beam.stiffness})", paper.SMALL_TEXT)
+        paper.put(sheet, f"C{row}", f"=loads_read({beam.line},{beam.loads})", paper.SMALL_TEXT)
+        paper.put(sheet, f"D{row}", beam.length(), paper.found("0.00"))
+        for case, letter in LOADS.items():
+            total = beam.ask("beam_result", f'"1 {case}"', '"total load"')
             paper.put(sheet, f"{letter}{row}", total, paper.found("#,##0.0"))
+        every = beam.ask("beam_result", None, '"total load"')
+        paper.put(sheet, f"{ALL}{row}", every, paper.found("#,##0.0", bold=True))
         fault = beam.ask("fault", schedule.combination("strength"))
-        paper.put(sheet, f"G{row}:H{row}", fault, paper.FAULT)
-        sheet.row_dimensions[row].height = 34 if row < last else 62
-    paper.alarm_when(sheet, f"G{FIRST}:H{last}", f"LEN($G{FIRST})>0")
+        paper.put(sheet, f"J{row}", fault, paper.FAULT)
+        sheet.row_dimensions[row].height = 41 if row < last else 62
+    others = f"ABS(${ALL}{FIRST}-SUM($E{FIRST}:$H{FIRST}))>0.001"
+    paper.alarm_when(sheet, f"{ALL}{FIRST}:{ALL}{last}", f"IF(ISERROR(${ALL}{FIRST}),TRUE,{others})")
+    paper.alarm_when(sheet, f"J{FIRST}:J{last}", f"IF(ISERROR($J{FIRST}),TRUE,LEN($J{FIRST})>0)")
     sheet.freeze_panes = f"B{FIRST}"
-    paper.page(sheet, f"A1:H{last}", design.issue.footer, titles="5:6")
+    paper.page(sheet, f"A1:J{last}", design.issue.footer, titles="5:6")
