@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from bisect import bisect_right
+from bisect import bisect_left, bisect_right
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 from itertools import pairwise
@@ -62,6 +62,7 @@ class Fields:
     stretches: tuple[Stretch, ...]
     jumps: tuple[frozenset[int], ...]
     starts: tuple[float, ...] = field(init=False)
+    _peaks: dict[int, float] = field(default_factory=dict, init=False, compare=False)
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "starts", tuple(stretch.x for stretch in self.stretches))
@@ -82,12 +83,15 @@ class Fields:
 
     def peak(self, which: int) -> float:
         """Return a bound on the magnitude of a field, not far above its largest one."""
-        return max(evaluate(tuple(map(abs, p.polynomials[which])), p.length) for p in self.stretches)
+        if which not in self._peaks:
+            bounds = (evaluate(tuple(map(abs, p.polynomials[which])), p.length) for p in self.stretches)
+            self._peaks[which] = max(bounds)
+        return self._peaks[which]
 
     def within(self, start: float, end: float) -> tuple[Stretch, ...]:
         """Return the stretches from one mark to another."""
         near = self.beam.near
-        return tuple(p for p in self.stretches if p.x >= start - near and p.end <= end + near)
+        return self.stretches[bisect_left(self.starts, start - near) : bisect_left(self.starts, end - near)]
 
     def extreme(self, which: int, sign: int, start: float, end: float) -> tuple[float, float]:
         """Return the largest (`sign` 1) or smallest (-1) value of a field between two marks, and its first place."""
