@@ -7,10 +7,8 @@ that cannot be answered is the `BeamError` itself.
 from __future__ import annotations
 
 from collections.abc import Callable
-from functools import lru_cache
 from typing import TypeAlias
 
-from beamfuncs.beam import Beam
 from beamfuncs.cells import (
     Argument,
     Cell,
@@ -27,26 +25,22 @@ from beamfuncs.cells import (
 from beamfuncs.documentation import worksheet_function
 from beamfuncs.errors import BeamError, impossible, unreadable
 from beamfuncs.fields import DEFLECTION, MOMENT, SHEAR, SLOPE
-from beamfuncs.loads import Loads
 from beamfuncs.notation import (
     beam_text,
     clause_text,
     is_load_table,
     read_beam,
     read_clauses,
-    read_combination,
     read_line,
     read_loads,
 )
-from beamfuncs.results import Result, read_phrase
+from beamfuncs.results import read_phrase
 from beamfuncs.sentences import beam_sentence, loads_sentence
-from beamfuncs.stiffness import Solution, solve
+from beamfuncs.solving import solved
 
 Rows: TypeAlias = list[list[float | BeamError]]
 """An array result: rows of numbers; an entry that cannot be answered is the error that says why."""
 
-SOLVED = 4096
-"""How many solved beams, and how many of their combinations, are kept."""
 POINTS = 21
 MOST_POINTS = 100_000
 
@@ -74,7 +68,7 @@ def reaction(
     >>> reaction("pinned 6 roller", "G: udl 5; Q: point 40 at 2", 2, None, "1.35 G + 1.5 Q")
     40.25
     """
-    return _result(beam, loads, stiffness, combination).reaction(_one_whole("support", support))
+    return solved(beam, loads, stiffness, combination).reaction(_one_whole("support", support))
 
 
 @worksheet_function
@@ -96,7 +90,7 @@ def reaction_moment(
     >>> reaction_moment("fixed 8 pinned", "udl 12", 1)
     -96.0
     """
-    return _result(beam, loads, stiffness, combination).reaction_moment(_one_whole("support", support))
+    return solved(beam, loads, stiffness, combination).reaction_moment(_one_whole("support", support))
 
 
 @worksheet_function
@@ -112,7 +106,7 @@ def reactions(beam: Argument, loads: Argument, stiffness: Argument = None, combi
     >>> reactions("fixed 8 pinned", "udl 12")
     [[1.0, 0.0, 60.0, -96.0], [2.0, 8.0, 36.0, 0.0]]
     """
-    result = _result(beam, loads, stiffness, combination)
+    result = solved(beam, loads, stiffness, combination)
     result.check_forces()
     return [
         [float(n), result.beam.x[index], result.reactions[index], result.reaction_moments[index]]
@@ -365,7 +359,7 @@ def beam_result(
     >>> beam_result("fixed 8 pinned", "udl 12", [["reaction 1"], ["total load"]])
     [[60.0], [96.0]]
     """
-    result = _result(beam, loads, stiffness, combination)
+    result = solved(beam, loads, stiffness, combination)
     return _each("phrase", phrase, lambda _, cell: result.answer(read_phrase(cell)))
 
 
@@ -398,7 +392,7 @@ def diagram(
     [2.0, -3.0, 6.0, 0.0, 0.008]
     [4.0, -3.0, 0.0, -0.006, 0.0]
     """
-    result = _result(beam, loads, stiffness, combination)
+    result = solved(beam, loads, stiffness, combination)
     cell = frozen("points", points)
     number_of_points = POINTS if not_given(cell) else _one_whole("points", points)
     if not 2 <= number_of_points <= MOST_POINTS:
@@ -427,7 +421,7 @@ def contraflexure(beam: Argument, loads: Argument, stiffness: Argument = None, c
     >>> round(x, 9)
     2.0
     """
-    return [[*_result(beam, loads, stiffness, combination).contraflexure()]]
+    return [[*solved(beam, loads, stiffness, combination).contraflexure()]]
 
 
 # --- text -----------------------------------------------------------------------------------------
@@ -531,7 +525,7 @@ def fault(beam: Argument, loads: Argument, stiffness: Argument = None, combinati
     "loads, clause 1: 'from 2 to 12' ends beyond the beam (length 8)"
     """
     try:
-        _result(beam, loads, stiffness, combination).check_forces()
+        solved(beam, loads, stiffness, combination).check_forces()
     except BeamError as error:
         return error.reason
     return ""
@@ -571,38 +565,13 @@ def unit_factor(from_unit: Argument, to_unit: Argument) -> float:
     return factor(frozen("from_unit", from_unit), frozen("to_unit", to_unit))
 
 
-# --- the walk of a cell ---------------------------------------------------------------------------
-
-_HASHED = frozenset({str, float, int, type(None)})
-
-
-def _result(beam: Argument, loads: Argument, stiffness: Argument, combination: Argument) -> Result:
-    """Return the solved beam, from the cache where the same values were solved before."""
-    return _cached(
-        beam if type(beam) in _HASHED else frozen("beam", beam),
-        loads if type(loads) in _HASHED else frozen("loads", loads),
-        stiffness if type(stiffness) in _HASHED else frozen("stiffness", stiffness),
-        combination if type(combination) in _HASHED else frozen("combination", combination),
-    )
-
-
-@lru_cache(SOLVED, typed=True)
-def _cached(beam: Frozen, loads: Frozen, stiffness: Frozen, combination: Frozen) -> Result:
-    line = read_beam(frozen("beam", beam), frozen("stiffness", stiffness))
-    placed = read_loads(frozen("loads", loads), line)
-    factors = placed.factors(read_combination(frozen("combination", combination)))
-    return Result.of(_solution(line, placed), factors)
-
-
-@lru_cache(SOLVED)
-def _solution(beam: Beam, loads: Loads) -> Solution:
-    return solve(beam, loads)
+# --- what the functions share ---------------------------------------------------------------------------
 
 
 def _at(
     which: int, beam: Argument, loads: Argument, x: Argument, stiffness: Argument, combination: Argument
 ) -> float | Rows:
-    result = _result(beam, loads, stiffness, combination)
+    result = solved(beam, loads, stiffness, combination)
     if type(x) is float:
         return result.value(which, x)
     return _each("x", x, lambda where, cell: result.value(which, number(where, cell, "a place"), where))
@@ -617,7 +586,7 @@ def _extreme(
     stiffness: Argument,
     combination: Argument,
 ) -> float:
-    result = _result(beam, loads, stiffness, combination)
+    result = solved(beam, loads, stiffness, combination)
     number_of_span = None if span is None or not_given(frozen("span", span)) else _one_whole("span", span)
     return result.extreme(which, sign, "span", number_of_span)[0]
 

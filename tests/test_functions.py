@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 
 from beamfuncs import functions as f
+from beamfuncs import solving
 from beamfuncs.errors import BeamError, ErrorValue
 
 PROPPED, UDL = "fixed 8 pinned", "udl 12"
@@ -224,7 +225,7 @@ def test_unit_factors(source: str, target: str, factor: float) -> None:
 def test_a_beam_is_solved_once_however_many_cells_ask(monkeypatch: pytest.MonkeyPatch) -> None:
     """Another place, phrase or combination of the same beam and loads starts from the solved columns."""
     solved = []
-    monkeypatch.setattr(f, "solve", lambda beam, loads, solve=f.solve: solved.append(1) or solve(beam, loads))
+    monkeypatch.setattr(solving, "solve", lambda *data, solve=solving.solve: solved.append(1) or solve(*data))
     beam, loads = "fixed 7.25 pinned 3.5 roller", "G: udl 5.125; Q: point 3 at 2"
     for x in range(5):
         f.moment_at(beam, loads, x, 24000, "1.35 G + 1.5 Q")
@@ -235,5 +236,5 @@ def test_a_beam_is_solved_once_however_many_cells_ask(monkeypatch: pytest.Monkey
 
 def test_the_caches_are_bounded() -> None:
     """A sweep over many beams cannot fill the memory."""
-    for cached in (f._cached, f._solution):
-        assert cached.cache_info().maxsize == f.SOLVED
+    for cached in (solving.combined, solving.columns):
+        assert cached.cache_info().maxsize == solving.KEPT

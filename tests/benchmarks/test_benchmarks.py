@@ -13,7 +13,7 @@ import pytest
 from scipy.linalg import solveh_banded
 
 from beamfuncs import functions as f
-from beamfuncs import notation
+from beamfuncs import notation, solving
 from beamfuncs.notation import read_beam
 from beamfuncs.stiffness import BANDS, _System
 
@@ -31,7 +31,7 @@ READERS = (
 
 def forget() -> None:
     """Empty every cache, so that the next answer is a cold one."""
-    for cached in (f._cached, f._solution, *READERS):
+    for cached in (solving.combined, solving.columns, *READERS):
         cached.cache_clear()
 
 
@@ -90,7 +90,7 @@ class TestThreeSpans:
         f.moment_max(BEAM, LOADS, None, EI, COMBINATION)
 
         def another() -> float:
-            f._cached.cache_clear()
+            solving.combined.cache_clear()
             return f.moment_max(BEAM, LOADS, None, EI, "G + Q")
 
         benchmark(another)
