@@ -6,6 +6,7 @@ is imported by that command, so that `--help` answers at once.
 
 from __future__ import annotations
 
+import gc
 import json
 import sys
 import time
@@ -17,9 +18,15 @@ from typing import TYPE_CHECKING, Annotated, NoReturn
 
 import typer
 
+from beamfuncs.trust import Trust
+
 if TYPE_CHECKING:
+    from rich.console import Console
+
     from beamfuncs.catalogue import Entry
-    from beamfuncs.hosts.headless import Report
+    from beamfuncs.hosts.checking import Checked
+    from beamfuncs.hosts.headless import CellFault, Report
+    from beamfuncs.hosts.stored import Difference
     from beamfuncs.hosts.view import View
 
 DONE, DONE_WITH_ERRORS, NOTHING_DONE = 0, 1, 2
@@ -28,6 +35,11 @@ LISTED = 50
 PATIENCE = 1.0
 """Seconds before a progress bar appears."""
 PIPE_WIDTH = 140
+LONG_WORDS = 20
+"""A row of one text longer than this is a note, and is printed below the table."""
+
+COLLECTED = 50_000, 50, 100
+"""How rarely Python looks for objects in circles: a tall workbook makes very many, and all live to the end."""
 
 app = typer.Typer(
     name="beamfuncs",
@@ -36,11 +48,16 @@ app = typer.Typer(
     add_completion=False,
 )
 
+Trusted = Annotated[
+    Trust,
+    typer.Option("--trust", help="Whose value counts where an ordinary cell stores another than is computed here."),
+]
 Json = Annotated[bool, typer.Option("--json", help="Print JSON for a script.")]
 
 
 def main() -> None:
     """Run the command line."""
+    gc.set_threshold(*COLLECTED)
     app()
 
 
@@ -81,6 +98,7 @@ def fill(
         Path | None,
         typer.Option("--report", metavar="FILE", help="Tell of every beam cell in a .csv, .json or .html (drawings)."),
     ] = None,
+    trust: Trusted = Trust.STORED,
     as_json: Json = False,
 ) -> None:
     """Compute a workbook's formulas and store the values beside them in a copy.
@@ -94,7 +112,7 @@ def fill(
     try:
         view = headless.view_of(book, show) if show else None
         with _progress_bar() as progress:
-            report = headless.fill(book, out, progress=progress, in_place=in_place, listing=listing)
+            report = headless.fill(book, out, progress=progress, in_place=in_place, listing=listing, trust=trust)
     except headless.NotFilled as error:
         _give_up(str(error))
     except KeyboardInterrupt:
@@ -115,6 +133,7 @@ def freeze(
         Path | None,
         typer.Option("-o", "--out", metavar="OUT.xlsx", help="Default: BOOK.frozen.xlsx beside the workbook."),
     ] = None,
+    trust: Trusted = Trust.STORED,
     as_json: Json = False,
 ) -> None:
     """Replace beam formulas by their values in a copy, for a reader without the functions.
@@ -126,7 +145,7 @@ def freeze(
 
     try:
         with _progress_bar() as progress:
-            report = headless.fill(book, out, progress=progress, freeze=True)
+            report = headless.fill(book, out, progress=progress, trust=trust, freeze=True)
     except headless.NotFilled as error:
         _give_up(str(error))
     except KeyboardInterrupt:
@@ -136,6 +155,35 @@ def freeze(
     else:
         _summarise(report, action="frozen")
     raise typer.Exit(DONE_WITH_ERRORS if report.errors else DONE)
+
+
+@app.command()
+def check(
+    books: Annotated[list[Path], typer.Argument(metavar="BOOK.xlsx|FOLDER...", help="Workbooks, or folders of them.")],
+    jobs: Annotated[int, typer.Option("--jobs", metavar="N", min=1, help="So many workbooks at a time.")] = 1,
+    trust: Trusted = Trust.STORED,
+    as_json: Json = False,
+) -> None:
+    """Compute workbooks without writing, and tell whether the values that they store are up to date.
+
+    Exit status: 0 all are; 1 a beam cell or one that builds on it is stale or stores nothing, or a cell has an
+    error; 2 a file cannot be read.
+    """
+    from beamfuncs.hosts.checking import check_all, workbooks
+
+    found: list[Checked] = []
+    try:
+        for one in check_all(workbooks(books), trust, jobs):
+            found.append(one)
+            if not as_json:
+                _print_checked(one)
+    except KeyboardInterrupt:
+        _give_up(f"interrupted after {_count(len(found), 'workbook')}")
+    if as_json:
+        print(json.dumps([asdict(one) for one in found], indent=2, ensure_ascii=False, default=str))
+    if any(one.unread for one in found):
+        raise typer.Exit(NOTHING_DONE)
+    raise typer.Exit(DONE if all(one.passes for one in found) else DONE_WITH_ERRORS)
 
 
 @app.command(name="list")
@@ -179,9 +227,14 @@ def _print_view(book: Path, view: View) -> None:
     table = Table(box=SIMPLE_HEAD)
     for title in head:
         table.add_column(Text(title))
+    notes = [row for row in body if len([word for word in row[1:] if word]) == 1 and len("".join(row[1:])) > LONG_WORDS]
     for row in body:
-        table.add_row(*map(Text, row))
-    Console(highlight=False, width=None if sys.stdout.isatty() else PIPE_WIDTH).print(table)
+        if row not in notes:
+            table.add_row(*map(Text, row))
+    console = Console(highlight=False, width=None if sys.stdout.isatty() else PIPE_WIDTH)
+    console.print(table)
+    for number, *words in notes:
+        console.print(Text(f"  {number}  {''.join(words)}"))
 
 
 def _summarise(report: Report, action: str = "filled") -> None:
@@ -191,13 +244,56 @@ def _summarise(report: Report, action: str = "filled") -> None:
     console = Console(highlight=False, soft_wrap=True)
     done = f"{_count(report.beam_cells, 'beam cell')} {action}, {_count(report.recomputed, 'other cell')} recomputed"
     errors = (f"{_count(len(report.errors), 'cell')} in error", "red") if report.errors else ("no errors", "green")
-    console.print(Text.assemble((str(report.target), "bold"), f": {done}, ", errors))
+    differ = f", {len(report.differences)} stored otherwise than computed" if report.differences else ""
+    console.print(Text.assemble((str(report.target), "bold"), f": {done}, ", errors, differ))
     if report.original:
         console.print(Text(f"  as it was: {report.original}"))
-    for fault in report.errors[:LISTED]:
+    _print_faults(console, report.errors)
+    _print_differences(console, report.differences)
+
+
+def _print_checked(checked: Checked) -> None:
+    from rich.console import Console
+    from rich.text import Text
+
+    from beamfuncs.hosts import telling
+
+    console = Console(highlight=False, soft_wrap=True)
+    told = telling.summary(checked), "green" if checked.passes else "red"
+    console.print(Text.assemble((str(checked.book), "bold"), ": ", told))
+    for one in checked.stale[:LISTED]:
+        console.print(Text(f"  {one.sheet}!{one.cell}  {telling.stale(one)}"))
+    _print_rest(console, len(checked.stale))
+    _print_faults(console, checked.errors)
+    _print_differences(console, checked.differences)
+
+
+def _print_faults(console: Console, faults: list[CellFault]) -> None:
+    from rich.text import Text
+
+    for fault in faults[:LISTED]:
         console.print(Text.assemble(f"  {fault.sheet}!{fault.cell}  ", (fault.value, "red"), f"  {fault.reason}"))
-    if len(report.errors) > LISTED:
-        console.print(f"  and {len(report.errors) - LISTED} more, which --json lists")
+    _print_rest(console, len(faults))
+
+
+def _print_differences(console: Console, differences: list[Difference]) -> None:
+    """Print whose stored value is not the computed one, those that depend on volatile functions apart."""
+    from rich.text import Text
+
+    from beamfuncs.hosts import telling
+
+    for volatile in (False, True):
+        listed = [one for one in differences if one.volatile is volatile]
+        if listed and volatile:
+            console.print("  depending on volatile functions:")
+        for one in listed[:LISTED]:
+            console.print(Text(f"  {one.sheet}!{one.cell}  {telling.difference(one)}"))
+        _print_rest(console, len(listed))
+
+
+def _print_rest(console: Console, count: int) -> None:
+    if count > LISTED:
+        console.print(f"  and {count - LISTED} more, which --json lists")
 
 
 def _count(number: int, what: str) -> str:

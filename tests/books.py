@@ -66,3 +66,29 @@ def values(path: Path, sheet: str = "Plan") -> dict[str, Any]:
 def formulas(path: Path, part: str = FIRST_SHEET) -> list[bytes]:
     """Every formula element of a sheet, byte for byte."""
     return re.findall(rb"<f\b(?:[^>]*/>|.*?</f>)", parts(path)[part], re.DOTALL)
+
+
+def store(path: Path, stored: Mapping[str, object], part: str = FIRST_SHEET, asks_to_calculate: bool = False) -> Path:
+    """Let formula cells of a sheet hold values, as a spreadsheet program stores them: errors as texts with `#`.
+
+    Such a program does not ask for the workbook to be calculated when it is opened, as openpyxl does.
+    """
+
+    def change(xml: bytes) -> bytes:
+        for name, value in stored.items():
+            kind, text = "", str(value)
+            if isinstance(value, bool):
+                kind, text = ' t="b"', str(int(value))
+            elif isinstance(value, str):
+                kind = ' t="e"' if value.startswith("#") else ' t="str"'
+                text = value.replace("&", "&amp;").replace("<", "&lt;")
+            cell = rf'<c r="{name}"[^>]*?(?: t="\w+")?>(<f.*?</f>|)<v\s*/?>(?:[^<]*</v>)?</c>'
+            new = rf'<c r="{name}"{kind}>\g<1><v>{text}</v></c>'
+            xml, count = re.subn(cell.encode(), new.encode(), xml)
+            assert count == 1, name
+        return xml
+
+    rewrite(path, part, change)
+    if not asks_to_calculate:
+        rewrite(path, "xl/workbook.xml", lambda xml: xml.replace(b' fullCalcOnLoad="1"', b""))
+    return path

@@ -4,12 +4,14 @@ from __future__ import annotations
 
 import json
 import os
+import re
 import subprocess
 import sys
 from pathlib import Path
 
 import pytest
 from books import build, values
+from openpyxl import load_workbook
 from typer.testing import CliRunner
 
 from beamfuncs import cli
@@ -233,7 +235,11 @@ def test_a_defined_name_is_shown(tmp_path: Path) -> None:
     book = Path(__file__).parent.parent / "workbooks" / "kestrel_quay.xlsx"
     status, out, _ = run("fill", book, "-o", tmp_path / "out.xlsx", "--show", "pads")
     assert status == 0
-    assert "Total G" in out
+    shown = load_workbook(tmp_path / "out.xlsx", data_only=True)["Foundations"]
+    totals = {row[0]: row[2] for row in shown["N7:P17"] for row in [[cell.value for cell in row]]}
+    assert totals["P1"] > 0
+    for pad, total in totals.items():
+        assert re.search(rf"{pad} .* {total:.6g} ", out)
 
 
 def test_a_part_that_is_not_there_is_said_before_anything_is_done(tmp_path: Path) -> None:

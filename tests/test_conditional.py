@@ -90,3 +90,39 @@ def test_several_criteria_at_once_are_refused(tmp_path: Path) -> None:
         **dict.fromkeys(("D1", "D2", "D3", "D4"), ("#VALUE!", SEVERAL)),
         "E4": ("#DIV/0!", "the criterion is the error value #DIV/0! itself; mend that cell"),
     }
+
+
+@pytest.mark.parametrize(
+    "formula",
+    [
+        "=SUMIFS(C1:C5,A1:A4,A1)",
+        "=SUMIFS(C1:C5,A1:A5,A1,B1:C5,1)",
+        "=AVERAGEIFS($C$1:$C$5,Plan!$A$1:$A$6,A1)",
+        "=COUNTIFS(A:A,A1,C1:C5,1)",
+        "=_xlfn.MAXIFS(C1:C5,A1:E1,A1)",
+        "=_xlfn.MINIFS(C1,A1:A2,A1)",
+        "=1+IF(TRUE,SUMIFS(C1:C5,'Plan'!A1:B5,A1))",
+    ],
+)
+def test_ranges_of_unlike_size_are_refused(formula: str, tmp_path: Path) -> None:
+    """Where the ranges of a conditional sum differ in size it is #VALUE!, as in a spreadsheet."""
+    report = fill(build(tmp_path / "book.xlsx", PADS | {"D1": formula}), functions={})
+    found = {fault.cell: (fault.value, fault.reason) for fault in report.errors}
+    assert found["D1"] == ("#VALUE!", "the ranges of a conditional sum or count are of unlike size")
+
+
+@pytest.mark.parametrize(
+    ("formula", "expected"),
+    [
+        ("=SUMIFS(C1:C5,A1:A5,A1)", 4),
+        ("=SUMIFS(C:C,Plan!$A:$A,A1)", 4),
+        ("=SUMIFS($C$1:C5,A$1:A5,A1)", 4),
+        ("=SUMIF(A1:A5,A1,C1)", 4),
+        ("=SUMIFS(C1:C5,$A1:$A5,A1)", 4),
+        ("=COUNTIFS(A1:A5,A1,C1:C5,1)", 1),
+    ],
+)
+def test_ranges_of_one_size_are_not(formula: str, expected: float, tmp_path: Path) -> None:
+    """Ranges of one size, however they are written, have their sum; SUMIF takes the size of its first range."""
+    report = fill(build(tmp_path / "book.xlsx", PADS | {"D1": formula}), functions={})
+    assert values(report.target)["D1"] == expected

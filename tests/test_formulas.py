@@ -6,6 +6,7 @@ import pytest
 
 from beamfuncs.hosts.formulas import Speller, Table, plain_reference
 from beamfuncs.hosts.grid import Area, area, cell_name, column_name, column_number
+from beamfuncs.hosts.names import Name, Names
 
 BEAMS = Table("Beams", "Bo's plan", Area(2, 3, 7, 6), ("Mark", "Span", "Load [kN/m]", "No. #"), total_rows=1)
 HERE = "'Bo''s plan'!"
@@ -81,14 +82,74 @@ def test_totals_of_a_table_without_a_totals_row() -> None:
 
 
 def test_tables_are_found_inside_a_formula() -> None:
-    """A table is known by name in any case; other books, unknown tables and texts stay as they are."""
+    """A table is known by name in any case; unknown tables and texts stay as they are."""
     speller = Speller({"reaction"}, [BEAMS])
-    text, calls = speller.respell('SUM(beams[Span])&"Beams[Span]"&[1]Plan!A1&Other[x]', "0,4,1", 4)
-    assert text == f'SUM({HERE}$D$3:$D$6)&"Beams[Span]"&[1]Plan!A1&Other[x]'
+    text, calls = speller.respell('SUM(beams[Span])&"Beams[Span]"&Other[x]', "0,4,1", 4)
+    assert text == f'SUM({HERE}$D$3:$D$6)&"Beams[Span]"&Other[x]'
     assert not calls
     text, calls = speller.respell("reaction(Beams[[#This Row],[Span]])", "0,4,1", 4)
     assert text == f"reaction.at(0,4,1,{HERE}$D4)"
     assert calls
+
+
+@pytest.mark.parametrize(
+    "reference",
+    [
+        "[1]Plan!A1",
+        "'[1]Bo''s plan'!$A$1:B2",
+        "[1]Plan!A:A",
+        "[1]Plan!$2:$3",
+        "[1]!Spans",
+        "'C:\\jobs\\[b.xlsx]P'!A1",
+        "[1]Plan!#REF!",
+    ],
+)
+def test_other_workbooks_become_errors(reference: str) -> None:
+    """A reference to another workbook, in whatever spelling, is a call that says so; what stands beside it stays."""
+    text, calls = Speller({"reaction"}, []).respell(f"SUM({reference},A1)&Plan!B2", "0,4,1")
+    assert text == "SUM(elsewhere.at(0,4,1),A1)&Plan!B2"
+    assert not calls
+
+
+@pytest.mark.parametrize(
+    ("formula", "expected"),
+    [
+        ("SUM(2:3)", "SUM($A2:$XFD3)"),
+        ("SUM($2:$3,Data!4:4)", "SUM($A$2:$XFD$3,Data!$A4:$XFD4)"),
+        ('A1:B2&"2:3"&C:C', None),
+        ("SUM(A1:A2:A3)", None),
+        ("SUM(Plan:Data!B2)", "SUM('Plan'!B2,'Bo''s'!B2,'Data'!B2)"),
+        ("MAX( 'Bo''s:Data'!B2:C3,1)", "MAX( 'Bo''s'!B2:C3,'Data'!B2:C3,1)"),
+        ("SUM(data:plan!B2)", "SUM('Plan'!B2,'Bo''s'!B2,'Data'!B2)"),
+        ("LARGE(Plan:Data!B2,2)", None),
+        ("SUM(Plan:Roof!B2)", None),
+        ("SUM(Data!B2)", None),
+        ("_xlfn.SINGLE(A1:A3)+1", "@(A1:A3)+1"),
+    ],
+)
+def test_references_that_the_engine_does_not_know_become_plain_areas(formula: str, expected: str | None) -> None:
+    """Whole rows, and an area through several sheets where a function takes it, are areas; others stay as they are."""
+    speller = Speller(set(), [], sheets=["Plan", "Bo's", "Data"])
+    assert speller.respell(formula, "0,1,1") == (formula if expected is None else expected, False)
+
+
+def test_names_for_formulas_are_put_in_their_place() -> None:
+    """A name means its formula, moved along where it is relative, in any case; texts and other names stay."""
+    names = Names(
+        [
+            Name("Force", None, "reaction(Plan!$A$1,Loads)"),
+            Name("Loads", None, '"udl "&Plan!$B$1'),
+            Name("Left", None, "Plan!A1*2"),
+            Name("Left", "Data", "Plan!$A$9*3"),
+            Name("Loop", None, "Loop+1"),
+        ]
+    )
+    speller = Speller({"reaction"}, [], names, ["Plan", "Data"])
+    force = 'reaction.at(0,4,2,Plan!$A$1,("udl "&Plan!$B$1))'
+    assert speller.respell('FORCE+1&"Force"', "0,4,2", 4, 2) == (f'({force})+1&"Force"', True)
+    assert speller.respell("Left", "0,4,2", 4, 2) == ("(Plan!B4*2)", False)
+    assert speller.respell("Left+Force.x+Left(1)", "1,4,2", 4, 2) == ("(Plan!$A$9*3)+Force.x+Left(1)", False)
+    assert speller.respell("Loop", "0,4,2", 4, 2) == ("(#NAME?+1)", False)
 
 
 @pytest.mark.parametrize(

@@ -10,7 +10,7 @@ import pytest
 from books import build, parts, rewrite
 from openpyxl.worksheet.table import Table
 
-from beamfuncs.hosts import package
+from beamfuncs.hosts import package, writing
 from beamfuncs.hosts.grid import Area
 from beamfuncs.hosts.package import NotAWorkbook, Package
 
@@ -142,7 +142,7 @@ def test_a_write_that_fails_leaves_nothing(tmp_path: Path, monkeypatch: pytest.M
     def full_disk(_: int) -> None:
         raise OSError(28, "no space left on device")
 
-    monkeypatch.setattr(package.os, "fsync", full_disk)
+    monkeypatch.setattr(writing.os, "fsync", full_disk)
     with pytest.raises(OSError, match="no space"):
         read.write(target, {})
     assert target.read_bytes() == b"as before"

@@ -16,8 +16,8 @@ from typing import NamedTuple, TypeAlias
 import formualizer as fz
 
 from beamfuncs.errors import NA, NUM, VALUE, BeamError, ErrorValue
-from beamfuncs.hosts.conditional import CRITERION
-from beamfuncs.hosts.formulas import TOLD
+from beamfuncs.hosts.conditional import CRITERION, UNLIKE
+from beamfuncs.hosts.formulas import ELSEWHERE, REF, TOLD
 from beamfuncs.hosts.grid import Area, area, cell_name, sheet_prefix
 from beamfuncs.hosts.splice import CellValue
 
@@ -29,6 +29,12 @@ CIRCULAR = ErrorValue("#CIRC!")
 NOT_READ = ErrorValue("#ERROR!")
 NOT_KNOWN = ErrorValue("#N/IMPL!")
 NO_ROOM = ErrorValue("#SPILL!")
+WHOLE_ROW = 16_384
+"""Columns."""
+LONGEST_ARRAY = 16_000
+"""Characters."""
+MOST_REFERENCES = 10_000
+"""Of a formula with more references the rest is not looked at."""
 FITTED = "fitted"
 """A function of the engine alone: an array cut and padded to the extent of an array formula."""
 
@@ -53,6 +59,13 @@ class EngineError(RuntimeError):
     """The engine cannot take the workbook; the message says why in one line."""
 
 
+class Call(NamedTuple):
+    """A call of one of our functions, with the arguments that it got."""
+
+    function: str
+    arguments: tuple[object, ...]
+
+
 class Failure(NamedTuple):
     """An error that one of our functions gave: in which entry, if in one of an array's."""
 
@@ -70,7 +83,7 @@ class Engine:
         sheets: Sequence[str],
         functions: Mapping[str, Function],
         counts_from_1904: bool = False,
-        called: Callable[[Place], None] = lambda place: None,
+        called: Callable[[Place, Call], None] = lambda place, call: None,
     ) -> None:
         settings = fz.EvaluationConfig()
         settings.enable_parallel = False
@@ -82,10 +95,13 @@ class Engine:
             raise EngineError(_told(error)) from error
         self._book.set_temporal_egress("serial")
         self._sheets = sheets
+        self._numbers = {sheet: number for number, sheet in enumerate(sheets)}
         self._called = called
         self._stopped: BaseException | None = None
         self.failures: defaultdict[Place, list[Failure]] = defaultdict(list)
         self._book.register_function(FITTED + TOLD, _fitted)
+        self._book.register_function(ELSEWHERE + TOLD, self._answering(ELSEWHERE, _elsewhere))
+        self._book.register_function(UNLIKE + TOLD, self._answering(UNLIKE, _unlike))
         self._book.register_function(CRITERION + TOLD, self._answering(CRITERION, _criterion))
         for name, function in functions.items():
             self._book.register_function(name + TOLD, self._answering(name, function))
@@ -137,17 +153,58 @@ class Engine:
         """Let a cell whose formula cannot be evaluated be an error, so that nothing builds on it."""
         self._book.set_formula(*self._cell(place), f"={VALUE}")
 
-    def precedents(self, place: Place) -> Iterator[tuple[int, Area]]:
-        """Yield the number of the sheet and the area of each reference in a cell's formula."""
-        for precedent in self._book.precedents(self._address(place)).precedents:
+    def set_constant(self, place: Place, value: CellValue) -> None:
+        """Let a cell hold a value in place of its formula."""
+        held = fz.LiteralValue.error(_KINDS.get(value, "Value"), None) if isinstance(value, ErrorValue) else value
+        self._book.set_value(*self._cell(place), held)
+
+    def set_array(self, place: Place, rows: list[list[CellValue]]) -> bool:
+        """Let a cell spill constants in place of its formula's array, unless there are too many; tell which."""
+        written = "={" + ";".join(",".join(map(_constant, row)) for row in rows) + "}"
+        short = len(written) <= LONGEST_ARRAY
+        if short:
+            self._book.set_formula(*self._cell(place), written)
+        return short
+
+    def breaks(self, place: Place) -> bool:
+        """Tell whether to evaluate a cell breaks off the evaluation of the whole workbook."""
+        try:
+            self._book.evaluate_cell(*self._cell(place))
+        except fz.ExcelEvaluationError:
+            if self._stopped:
+                raise self._stopped from None
+            return True
+        return False
+
+    def formula(self, place: Place) -> str:
+        """Return the formula of a cell as the engine has it, "" if it has none."""
+        return self._book.get_formula(*self._cell(place)) or ""
+
+    def references(self, place: Place) -> list[tuple[int, Area]]:
+        """Return the number of the sheet and the area of each reference in a cell's formula."""
+        return [known for known in self._inputs(place) if known]
+
+    def knows_inputs(self, place: Place) -> bool:
+        """Tell whether `references` has all that a cell's formula refers to."""
+        return all(self._inputs(place))
+
+    def _inputs(self, place: Place) -> Iterator[tuple[int, Area] | None]:
+        """Yield the sheet and the area of each reference in a cell's formula, None for one that cannot be followed."""
+        report = self._book.precedents(self._address(place), max_links=MOST_REFERENCES)
+        for precedent in report.precedents:
             reference = precedent.reference
             named = reference.resolution
+            if named and named.kind == fz.NameResolutionKind.Literal:
+                continue
             text = reference.address or reference.resolved or (named and (named.address or named.resolved))
-            if text:
-                sheet, _, cells = text.rpartition("!")
-                name = sheet.removeprefix("'").removesuffix("'").replace("''", "'")
-                if name in self._sheets:
-                    yield self._sheets.index(name), area(cells)
+            sheet, _, cells = (text or "").rpartition("!")
+            number = self._numbers.get(sheet.removeprefix("'").removesuffix("'").replace("''", "'"))
+            if number is not None:
+                yield number, area(cells)
+            elif reference.kind != fz.ReferenceKind.Range or not reference.declared:
+                yield None
+        if report.truncation.incomplete:
+            yield None
 
     def _cell(self, place: Place) -> tuple[str, int, int]:
         number, row, column = place
@@ -164,10 +221,11 @@ class Engine:
         def answer(sheet: float, row: float, column: float, *arguments: object) -> object:
             place = int(sheet), int(row), int(column)
             try:
-                self._called(place)
+                given = tuple(map(_argument, arguments))
+                self._called(place, Call(name, given))
                 if not fewest <= len(arguments) <= most:
                     raise BeamError(VALUE, _count_of_arguments(name, fewest, most, len(arguments)))
-                result = function(*map(_argument, arguments))
+                result = function(*given)
             except BeamError as error:
                 return self._failed(place, error)
             except Exception as error:
@@ -199,14 +257,33 @@ class Engine:
         return fz.LiteralValue.error(_KINDS.get(error.value, "Value"), None)
 
 
+def _constant(value: CellValue) -> str:
+    """Return a value as it is written in a formula."""
+    if isinstance(value, ErrorValue):
+        return str(value)
+    if isinstance(value, str):
+        return '"' + value.replace('"', '""') + '"'
+    if isinstance(value, bool):
+        return "TRUE" if value else "FALSE"
+    return repr(value or 0.0)
+
+
 def _told(error: Exception) -> str:
     return f"it cannot be evaluated ({' '.join(str(error).split())})"
 
 
 def _argument(value: object) -> object:
     if isinstance(value, list):
+        if value and len(value[0]) == WHOLE_ROW:
+            value = _without_blank_end(value)
         return [[_from_engine(one) for one in row] for row in value]
     return _from_engine(value)
+
+
+def _without_blank_end(rows: list[list[object]]) -> list[list[object]]:
+    """Return whole rows up to the last column that holds something, as the engine gives whole columns."""
+    used = max((number for row in rows for number, value in enumerate(row, 1) if value is not None), default=1)
+    return [row[:used] for row in rows]
 
 
 def _from_engine(value: object) -> CellValue:
@@ -226,6 +303,14 @@ def _criterion(value: object) -> object:
     if isinstance(value, ErrorValue):
         raise BeamError(str(value), f"the criterion is the error value {value} itself; mend that cell")
     return 0.0 if value is None else value
+
+
+def _unlike() -> object:
+    raise BeamError(VALUE, "the ranges of a conditional sum or count are of unlike size")
+
+
+def _elsewhere() -> object:
+    raise BeamError(REF, "refers to another workbook, which is not opened here")
 
 
 def _fitted(array: object, rows: float, columns: float) -> list[list[object]]:

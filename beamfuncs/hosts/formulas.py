@@ -3,30 +3,50 @@
 The engine tells a function neither which cell calls it nor knows tables. So each call of ours gets
 three hidden leading arguments, the number of the sheet, the row and the column of the calling cell
 (`reaction(A1, B1, 1)` in the third sheet's D2 becomes `reaction.at(3,2,4,A1, B1, 1)`), and
-`Beams[Span]` becomes `'Schedule'!$C$2:$C$20`. The workbook's own formulas are never touched.
+`Beams[Span]` becomes `'Schedule'!$C$2:$C$20`. So do whole rows (`2:3` becomes `A2:XFD3`), one area through
+several sheets (`SUM(Plan:Roof!B2)`), names that stand for formulas, and references to other workbooks, which are never
+opened (`elsewhere.at(3,2,4)`, an error). The workbook's own formulas are never touched.
 """
 
 from __future__ import annotations
 
 import re
-from collections.abc import Collection, Mapping
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass
 
 from beamfuncs.errors import VALUE
+from beamfuncs.hosts.bounds import why_refused
 from beamfuncs.hosts.grid import Area, column_name, sheet_prefix
+from beamfuncs.hosts.names import LONGEST_FORMULA, Names
 
-REF = "#REF!"
+REF, NAME = "#REF!", "#NAME?"
 TOLD = ".at"
 """Ends the name of a function that is told which cell calls it."""
 
+ELSEWHERE = "elsewhere"
+"""A function of the engine alone: what another workbook holds, which is an error."""
+
+MOST_NAMES, DEEPEST_NAMES = 1_000, 50
+"""So many names, and so deep in one another, are replaced in one formula; what is left is the engine's to judge."""
+
+_AREA = r"(?:\$?[A-Z]{1,3}\$?[0-9]+(?::\$?[A-Z]{1,3}\$?[0-9]+)?|\$?[A-Z]{1,3}:\$?[A-Z]{1,3}|\$?[0-9]+:\$?[0-9]+)"
+_OTHER_BOOK = r"(?:'(?:[^']|'')*\[[^\[\]']+\](?:[^']|'')*'|(?<![\w\]])\[[^\[\]]+\][^\W\d]?[\w.]*)"
+_TAKES_SHEETS = "SUM|AVERAGE|AVERAGEA|COUNT|COUNTA|MAX|MAXA|MIN|MINA|PRODUCT"
+"""Functions to which it is all one whether areas come as one argument or as several."""
+
 _PIECE = re.compile(
-    r"""
+    rf"""
       "(?:[^"]|"")*"                                    # a text
+    | (?P<elsewhere>{_OTHER_BOOK}!(?:{_AREA}|\#REF!|[^\W\d][\w.\\]*(?:\[[^\]]*\])?))
+    | \b(?P<over>(?:{_TAKES_SHEETS})\(\s*)
+      (?:'(?P<quoted>(?:[^':\[]|'')+:(?:[^':\[]|'')+)'|(?P<plain>[^\W\d][\w.]*:[^\W\d][\w.]*))!(?P<area>{_AREA})
+    | (?<![\w.$'\]!])(?:(?P<on>'(?:[^']|'')*'|[^\W\d][\w.]*)!)?(?P<name>[^\W\d][\w.\\?]*)(?![\w.\\?(!\[:])
     | '(?:[^']|'')*'                                    # the quoted name of a sheet
-    | (?:_xlfn\.|_xludf\.)*(?P<call>[^\W\d][\w.]*)\(\s*(?P<bare>\))?
-    | (?P<table>[^\W\d][\w.\\]*)\[(?P<part>(?:'.|[^\[\]']|\[(?:'.|[^\[\]'])*\])*)\]
+    | (?<![\w.])(?:_xlfn\.|_xludf\.)*(?P<call>[^\W\d][\w.]*)\(\s*(?P<bare>\))?
+    | (?<![\w.\\])(?P<table>[^\W\d][\w.\\]*)\[(?P<part>(?:'.|[^\[\]']|\[(?:'.|[^\[\]'])*\])*)\]
+    | (?<![\w.$:'"\])])(?P<top>\$?[0-9]+):(?P<bottom>\$?[0-9]+)(?![\w.:(])
     """,
-    re.VERBOSE | re.DOTALL,
+    re.VERBOSE | re.DOTALL | re.IGNORECASE,
 )
 _ITEM = re.compile(r"\[((?:'.|[^\[\]'])*)\]", re.DOTALL)
 
@@ -55,17 +75,32 @@ class Speller:
     ('reaction.at(3,2,4,A2, "reaction(")', True)
     """
 
-    def __init__(self, functions: Collection[str], tables: Collection[Table]) -> None:
+    def __init__(
+        self,
+        functions: Collection[str],
+        tables: Collection[Table],
+        names: Names | None = None,
+        sheets: Sequence[str] = (),
+    ) -> None:
         self._functions = {name.casefold() for name in functions}
+        self._names = names or Names()
+        self._sheets = sheets
+        self._meanings = 0
         self._tables: Mapping[str, Table] = {table.name.casefold(): table for table in tables}
-        names = "|".join(map(re.escape, self._functions)) or r"(?!)"
-        self._worth_it = re.compile(rf"\[|\b(?:{names})\(", re.IGNORECASE)
+        calls = "|".join(map(re.escape, [*self._functions, "SINGLE"]))
+        meant = "".join(rf"|\b{re.escape(name)}\b" for name in self._names.unknown)
+        meant += "".join(rf"|!{re.escape(name)}\b" for name in self._names.all)
+        several_sheets, rows = r":(?:[^:!'()]|'')+'?!", r"\d:\$?\d"
+        self._worth_it = re.compile(rf"\[|\b(?:{calls})\(|{rows}|{several_sheets}{meant}", re.IGNORECASE)
 
-    def respell(self, formula: str, place: str, row: int = 0) -> tuple[str, bool]:
+    def respell(self, formula: str, place: str, row: int = 0, column: int = 0, inside: str = "") -> tuple[str, bool]:
         """Return the formula for the engine and whether it calls one of our functions.
 
-        `place` is the text of the hidden arguments, `row` the row that `[#This Row]` means.
+        `place` is the text of the hidden arguments, `row` the row that `[#This Row]` means, `inside` the names
+        that the formula is the meaning of, each between two blanks.
         """
+        if not inside:
+            self._meanings = 0
         if not self._worth_it.search(formula):
             return formula, False
         calls = False
@@ -74,6 +109,8 @@ class Speller:
             nonlocal calls
             if found["call"]:
                 name = found["call"].casefold()
+                if name == "single":
+                    return "@("
                 if name not in self._functions:
                     return found[0]
                 calls = True
@@ -81,9 +118,48 @@ class Speller:
             if found["table"]:
                 table = self._tables.get(found["table"].casefold())
                 return found[0] if table is None else plain_reference(table, found["part"], row)
+            if found["elsewhere"]:
+                return f"{ELSEWHERE}{TOLD}({place})"
+            if found["over"]:
+                several = (found["quoted"] or found["plain"]).replace("''", "'")
+                areas = self._through_sheets(several, found["area"])
+                return found["over"] + areas if areas else found[0]
+            if found["top"]:
+                return f"$A{found['top']}:$XFD{found['bottom']}"
+            if found["name"]:
+                on = found["on"] and found["on"].removeprefix("'").removesuffix("'").replace("''", "'")
+                meaning, calling = self._meaning(found["name"], on, place, row, column, inside)
+                calls = calls or calling
+                return meaning or found[0]
             return found[0]
 
         return _PIECE.sub(piece, formula), calls
+
+    def _meaning(self, name: str, on: str | None, place: str, row: int, column: int, inside: str) -> tuple[str, bool]:
+        """Return what a name stands for, called by the sheet `on`, and whether it calls ours; or a blank text."""
+        formula = self._names.meaning(name, on or self._sheet(place), row, column, called_by_sheet=on is not None)
+        self._meanings += 1
+        deep = inside.count("  ") > DEEPEST_NAMES or self._meanings > MOST_NAMES
+        if formula is None or deep or why_refused(formula):
+            return "", False
+        mark = f" {on or ''}!{name.casefold()} "
+        if mark in inside:
+            return NAME, False
+        text, calls = self.respell(formula, place, row, column, inside + mark)
+        return ("", False) if len(text) > LONGEST_FORMULA else (f"({text})", calls)
+
+    def _sheet(self, place: str) -> str:
+        number = int(place.partition(",")[0])
+        return self._sheets[number] if number < len(self._sheets) else ""
+
+    def _through_sheets(self, several: str, area: str) -> str:
+        """Return one area in each of the sheets from a first to a last; a blank text if there are no such."""
+        sheets = [sheet.casefold() for sheet in self._sheets]
+        first, _, last = several.casefold().partition(":")
+        if first not in sheets or last not in sheets:
+            return ""
+        ends = sorted((sheets.index(first), sheets.index(last)))
+        return ",".join(f"{sheet_prefix(sheet)}{area}" for sheet in self._sheets[ends[0] : ends[1] + 1])
 
 
 def plain_reference(table: Table, part: str, row: int) -> str:

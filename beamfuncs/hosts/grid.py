@@ -6,6 +6,9 @@ import re
 from functools import cache
 from typing import NamedTuple
 
+LAST_ROW, LAST_COLUMN = 1_048_576, 16_384
+"""The last row and column that a sheet can have."""
+
 _CELL = re.compile(r"\$?([A-Za-z]{1,3})\$?([1-9][0-9]*)")
 
 
@@ -27,6 +30,13 @@ class Area(NamedTuple):
 
     def __str__(self) -> str:
         first, last = cell_name(self.top, self.left), cell_name(self.bottom, self.right)
+        return first if first == last else f"{first}:{last}"
+
+    @property
+    def fixed(self) -> str:
+        """The name of the area that stays when its formula is copied, such as `$B$2:$D$5`."""
+        corners = ((self.top, self.left), (self.bottom, self.right))
+        first, last = (f"${column_name(column)}${row}" for row, column in corners)
         return first if first == last else f"{first}:{last}"
 
     def cells(self) -> list[tuple[int, int]]:
@@ -69,6 +79,8 @@ def column_name(column: int) -> str:
 @cache
 def column_number(letters: str) -> int:
     """Return the number, from 1, of a column named by its letters."""
+    if not letters.isascii() or not letters.isalpha():
+        raise ValueError(f"{letters!r} names no column")
     number = 0
     for letter in letters.upper():
         number = number * 26 + ord(letter) - ord("A") + 1
@@ -88,4 +100,7 @@ def _row_and_column(name: str) -> tuple[int, int]:
     found = _CELL.fullmatch(name)
     if not found:
         raise ValueError(f"{name!r} names no cell")
-    return int(found[2]), column_number(found[1])
+    row, column = int(found[2]), column_number(found[1])
+    if row > LAST_ROW or column > LAST_COLUMN:
+        raise ValueError(f"{name!r} lies beyond the last cell of a sheet")
+    return row, column

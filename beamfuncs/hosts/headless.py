@@ -3,33 +3,46 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Callable, Iterable, Iterator, Mapping
+from collections.abc import Callable, Collection, Iterable, Iterator, Mapping
 from contextlib import contextmanager
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from html import escape, unescape
 from pathlib import Path
 from typing import NamedTuple, TypeVar
 
 from beamfuncs.errors import VALUE, ErrorValue
+from beamfuncs.hosts.archive import MOST_BYTES
+from beamfuncs.hosts.bounds import why_refused
+from beamfuncs.hosts.calls import Calls
 from beamfuncs.hosts.conditional import CRITERION, guarded
-from beamfuncs.hosts.engine import FITTED, NO_ROOM, Engine, EngineError, Function, Place
+from beamfuncs.hosts.engine import FITTED, NO_ROOM, Call, Engine, EngineError, Function, Place
 from beamfuncs.hosts.formulas import TOLD, Speller
+from beamfuncs.hosts.freezing import frozen
 from beamfuncs.hosts.grid import Area, cell_name
-from beamfuncs.hosts.layout import Cell, Layout, SheetError, read
+from beamfuncs.hosts.layout import MOST_FORMULAS, MOST_IN_ARRAYS, Cell, Layout, SheetError, read
+from beamfuncs.hosts.names import Names, defined_names
 from beamfuncs.hosts.package import NotAWorkbook, Package, Sheet
-from beamfuncs.hosts.reasons import reason, source_of
+from beamfuncs.hosts.plain import packed
+from beamfuncs.hosts.reasons import Reasons, source_of
 from beamfuncs.hosts.splice import CellValue, filled, for_engine, written
+from beamfuncs.hosts.stored import USERS, Comparison, Difference, Filled, Found, shown, stored_value
 from beamfuncs.hosts.view import View, find
+from beamfuncs.hosts.writing import NotWritten
+from beamfuncs.trust import Trust
 
 T = TypeVar("T")
 
 LONGEST_TEXT = 32_767
 """The most characters that a cell holds."""
 
-_DEFINED_NAME = re.compile(rb"(<(?:[\w.-]+:)?definedName\b[^>]*>)([^<]*\[[^<]*)(?=</)")
+_DEFINED_NAME = re.compile(rb"(<(?:[\w.-]+:)?definedName\b[^>]*>)([^<]*)(?=</)")
+_CALCULATED_ON_LOAD = re.compile(rb"""<(?:[\w.-]+:)?calcPr\b[^>]*\bfullCalcOnLoad\s*=\s*["'](?:1|true)["']""")
 _TOO_LONG = f"the text is longer than the {LONGEST_TEXT} characters that a cell holds"
 _WHAT_IF = "a what-if table is not evaluated here: its stored values are kept"
+_ASKS_TO_CALCULATE = "the workbook asks to be calculated anew when it is opened: its stored values may be old"
+_TOO_MANY = f"the arrays of the workbook spill into more than {MOST_IN_ARRAYS:,} cells"
+_BREAKS_OFF = "the formula cannot be evaluated here"
 _NARROW = "it gives an array, for which an ordinary cell has no room: enter it as an array formula"
 
 
@@ -49,13 +62,30 @@ class CellFault:
 
 
 @dataclass(frozen=True)
+class ListedCell:
+    """A cell that calls our functions, or the array that it fills: what a report tells of it."""
+
+    sheet: str
+    cells: str
+    formula: str
+    values: list[list[CellValue]]
+    faults: tuple[CellFault, ...]
+    calls: tuple[Call, ...]
+
+
+@dataclass(frozen=True)
 class Report:
-    """What was done: the file written, how many cells of each kind got their value, and the errors."""
+    """What was done: the file written, how many cells of each kind got their value, and the errors.
+
+    `original` is the dated copy of a workbook that was filled in place.
+    """
 
     target: Path
     beam_cells: int
     recomputed: int
     errors: list[CellFault] = field(default_factory=list)
+    differences: list[Difference] = field(default_factory=list)
+    original: Path | None = None
 
 
 def fill(
@@ -63,27 +93,54 @@ def fill(
     target: str | Path | None = None,
     functions: Mapping[str, Function] | None = None,
     progress: Callable[[int, int], None] = lambda done, of: None,
+    listing: str | Path | None = None,
+    trust: Trust = Trust.STORED,
+    freeze: bool = False,
+    in_place: bool = False,
 ) -> Report:
     """Fill a workbook's formulas with their values and write it to `target`.
 
     Without a `target` it is written beside the source: `plan.xlsx` to `plan.filled.xlsx`. The
     source is never written to. `functions` are ours unless others are given; `progress` is told how
-    many of the cells that call them have done so. Raises `NotFilled` when nothing could be done.
+    many of the cells that call them have done so. The file `listing`, a .csv, .json or .html, tells of
+    each of these cells where it is wanted, and `progress` is told again how many are in it. Raises
+    `NotFilled` when nothing could be done. `trust` says whose value is taken where an ordinary cell
+    stores another than the engine gives. With `freeze`, formulas that call the functions give way to
+    their values, and are kept in notes (`plan.frozen.xlsx`). With `in_place` the workbook itself is
+    filled, and what it was stands in a dated copy beside it.
     """
     source = Path(source)
-    target = source.with_suffix(f".filled{source.suffix}") if target is None else Path(target)
-    with _refusing(source):
-        _check(source, target)
-        filling = _Filling(Package.read(source), _catalogued() if functions is None else functions)
+    done = "frozen" if freeze else "filled"
+    target = source.with_suffix(f".{done}{source.suffix}") if target is None else Path(target)
+    with refusing(source):
+        if in_place:
+            target = source
+        else:
+            _check(source, target)
+        functions = catalogued() if functions is None else functions
+        if listing is not None:
+            listing = _checked_listing(Path(listing), source, target)
+        filling = Filling(Package.read(source), functions, None if listing is None else Calls())
         filling.evaluate(progress)
-        report = Report(target, len(filling.beam_cells), filling.other_cells, list(filling.faults()))
-        filling.package.write(target, filling.parts())
+        filling.settle(trust)
+        report = Report(
+            target, len(filling.beam_cells), filling.recomputed, list(filling.faults()), filling.differences()
+        )
+        cells = filling.listed(report.errors) if listing is not None or freeze else []
+        if listing is not None:
+            from beamfuncs.hosts import reporting
+
+            reporting.write(listing, reporting.Listing(source, report, cells, functions), progress)
+        filled_parts = filling.parts()
+        if in_place:
+            return replace(report, original=filling.package.rewrite(filled_parts))
+        filling.package.write(target, frozen(filling.package, filled_parts, cells) if freeze else filled_parts)
     return report
 
 
 def view_of(source: Path, name: str) -> View:
     """Return the part of a workbook that `name` means; raises `NotFilled` where there is none."""
-    with _refusing(source):
+    with refusing(source):
         found = find(Package.read(source), name)
     if found is None:
         raise NotFilled(f"{source}: has no sheet, defined name or area that is called {name}")
@@ -91,7 +148,7 @@ def view_of(source: Path, name: str) -> View:
 
 
 @contextmanager
-def _refusing(source: Path) -> Iterator[None]:
+def refusing(source: Path) -> Iterator[None]:
     """Turn what goes wrong with a workbook into `NotFilled`."""
     if not source.is_file():
         raise NotFilled(f"{source}: {'is a folder' if source.is_dir() else 'there is no such file'}")
@@ -99,20 +156,32 @@ def _refusing(source: Path) -> Iterator[None]:
         yield
     except OSError as error:
         raise NotFilled(f"{error.filename or source}: {(error.strerror or str(error)).lower()}") from error
+    except NotWritten as error:
+        raise NotFilled(str(error)) from error
     except (NotAWorkbook, EngineError) as error:
         raise NotFilled(f"{source}: {error}") from error
 
 
 def _check(source: Path, target: Path) -> None:
     if target.exists() and target.samefile(source):
-        raise NotFilled(f"{target}: is the workbook itself, which is never written over")
+        raise NotFilled(f"{target}: is the workbook itself, which is never written over; --in-place fills it")
     if target.suffix.lower() != source.suffix.lower():
         raise NotFilled(f"{target}: the filled workbook must end in {source.suffix} as well")
     if not target.parent.is_dir():
         raise NotFilled(f"{target.parent}: there is no such folder to write to")
 
 
-def _catalogued() -> dict[str, Function]:
+def _checked_listing(listing: Path, source: Path, target: Path) -> Path:
+    from beamfuncs.hosts.reporting import FORMS
+
+    if listing.suffix.lower() not in FORMS:
+        raise NotFilled(f"{listing}: a report must end in {', '.join(FORMS)}")
+    if not listing.parent.is_dir():
+        raise NotFilled(f"{listing.parent}: there is no such folder to write to")
+    return listing
+
+
+def catalogued() -> dict[str, Function]:
     from beamfuncs.catalogue import catalogue
 
     return {name: entry.function for name, entry in catalogue().items()}
@@ -126,23 +195,26 @@ class _Value(NamedTuple):
     reason: str = ""
 
 
-class _Filling:
+class Filling:
     """One workbook on its way from its package, through the engine, to its values and faults."""
 
-    def __init__(self, package: Package, functions: Mapping[str, Function]) -> None:
+    def __init__(self, package: Package, functions: Mapping[str, Function], calls: Calls | None = None) -> None:
         self.package = package
+        self.calls = calls
         self.beam_cells: set[Place] = set()
         self._functions = functions
-        self._layouts = [_layout(sheet) for sheet in package.sheets]
+        self._layouts = _layouts(package.sheets)
         self._cells: dict[Place, Cell] = {
             (number, *cell.place): cell for number, layout in enumerate(self._layouts) for cell in layout.formulas()
         }
-        self._refused: set[Place] = set()
+        self._refused: dict[Place, str] = {}
         self._new_extents: dict[Place, Area] = {}
 
     @property
-    def other_cells(self) -> int:
-        return len(self._cells) - len(self.beam_cells)
+    def recomputed(self) -> int:
+        """How many ordinary formulas there are, but for those that keep another value than the engine's."""
+        kept = {one.node for one in self.comparison.found if one.kept}
+        return len(self._cells) - len(self.beam_cells) - len(kept)
 
     # --- through the engine ---
 
@@ -150,19 +222,68 @@ class _Filling:
         """Let the engine evaluate the workbook, its formulas respelt."""
         done: set[Place] = set()
 
-        def called(place: Place) -> None:
-            if place in self.beam_cells and place not in done:
+        def called(place: Place, call: Call) -> None:
+            if place not in self.beam_cells:
+                return
+            if self.calls is not None and call.function in self._functions:
+                self.calls.note(place, call)
+            if place not in done:
                 done.add(place)
                 progress(len(done), len(self.beam_cells))
 
         names = [sheet.name for sheet in self.package.sheets]
         book = self._book_for_engine()
         self.engine = Engine(book, names, self._functions, self.package.counts_from_1904, called)
-        self.engine.evaluate()
+        try:
+            self.engine.evaluate()
+        except EngineError:
+            self._refuse_what_breaks_off()
+            self.engine.evaluate()
         self._keep_to_one_cell()
+        self._keep_arrays_within_bounds()
+        self.comparison = Comparison(
+            engine=self.engine,
+            nodes=self._cells,
+            arrays=[place for place, cell in self._cells.items() if cell.extent],
+            beam_cells=self.beam_cells,
+            fills=self._fills,
+            refused=self._refused,
+            why=lambda place, node, value: self._refused.get(node) or self._reasons.of(place, node, value),
+            evaluate=self._evaluate_again,
+            placeholders=self._asks_to_be_calculated,
+        )
+
+    def settle(self, trust: Trust) -> None:
+        """Decide where the stored values of ordinary cells are kept, and let all else follow from it."""
+        self.comparison.settle(trust)
+
+    def _fills(self, node: Place) -> Iterator[Filled]:
+        """Yield what a formula fills, with what stands there in the file."""
+        for place, one in dict(self._values_from(node)).items():
+            if place == node or place not in self._cells:
+                cell = self._layouts[place[0]].cells.get(place[1:])
+                extent = self._cells[node].extent
+                before = place == node or (extent is not None and extent.holds(*place[1:]))
+                yield Filled(place, before, stored_value(cell) if cell else None, one.value)
+
+    @cached_property
+    def _asks_to_be_calculated(self) -> bool:
+        return _CALCULATED_ON_LOAD.search(self.package.parts[self.package.workbook_part]) is not None
+
+    @cached_property
+    def _reasons(self) -> Reasons:
+        return Reasons(self.engine)
+
+    def _evaluate_again(self) -> None:
+        self.__dict__.pop("_reasons", None)
+        if self.calls is not None:
+            self.calls.begin_round()
+        self.engine.evaluate()
 
     def _book_for_engine(self) -> bytes:
-        speller = Speller(self._functions, self.package.tables)
+        sheets = [sheet.name for sheet in self.package.sheets]
+        meanings = Names(list(defined_names(self.package.parts[self.package.workbook_part])))
+        speller = Speller(self._functions, self.package.tables, meanings, sheets)
         spelt = _by_sheet(self._spelt(speller), len(self._layouts))
         parts = {
             sheet.part: for_engine(sheet.xml, layout, spellings)
@@ -172,15 +293,24 @@ class _Filling:
         parts[self.package.workbook_part] = _DEFINED_NAME.sub(
             lambda found: found[1] + _respelt_name(found[2], speller), names
         )
-        return self.package.copy(parts)
+        return packed({**self.package.computed_from(), **parts})
 
     def _spelt(self, speller: Speller) -> Iterator[tuple[Place, str]]:
         """Yield every formula as the engine is to evaluate it, and note which call ours."""
         sharing_calls: set[tuple[int, str]] = set()
+        sharing_refused: dict[tuple[int, str], str] = {}
+        length = 0
         for place, cell in self._cells.items():
             number, row, column = place
+            why = why_refused(cell.formula or "") or sharing_refused.get((number, cell.shared), "")
+            if why:
+                self._refused[place] = why
+                if cell.shared:
+                    sharing_refused[number, cell.shared] = why
+                yield place, VALUE
+                continue
             told = f"{number},ROW(),COLUMN()" if cell.shared else f"{number},{row},{column}"
-            text, calls = speller.respell(cell.formula or "", told, row)
+            text, calls = speller.respell(cell.formula or "", told, row, column)
             if calls and cell.shared:
                 sharing_calls.add((number, cell.shared))
             if calls or (number, cell.shared) in sharing_calls:
@@ -188,7 +318,20 @@ class _Filling:
             text = guarded(text, f"{CRITERION}{TOLD}({told},")
             if cell.extent and not cell.dynamic:
                 text = f"{FITTED}{TOLD}({text},{len(cell.extent.rows)},{len(cell.extent.columns)})"
+            length += len(text)
+            if length > MOST_BYTES:
+                raise NotAWorkbook(f"it is too large: its formulas and names exceed {MOST_BYTES >> 20} MB")
             yield place, text
+
+    def _refuse_what_breaks_off(self) -> None:
+        """Refuse the few formulas at which the engine gives up on all others too."""
+        while broken := {place for place in self._cells if place not in self._refused and self.engine.breaks(place)}:
+            above = {place: list(self.engine.references(place)) for place in broken}
+            few = broken if len(broken) < 1000 else ()
+            first = {place for place in few if not _refers_to(above[place], broken - {place})}
+            for place in first or broken:
+                self.engine.refuse(place)
+                self._refused[place] = _BREAKS_OFF
 
     def _keep_to_one_cell(self) -> None:
         """Let no ordinary formula fill more than its own cell, as the engine would have it do."""
@@ -197,11 +340,24 @@ class _Filling:
             for place in spilling:
                 if place in narrowed:
                     self.engine.refuse(place)
-                    self._refused.add(place)
+                    self._refused[place] = _NARROW
                 else:
                     self.engine.narrow(place)
                     narrowed.add(place)
-            self.engine.evaluate()
+            self._evaluate_again()
+
+    def _keep_arrays_within_bounds(self) -> None:
+        """Let no arrays spill into more cells in all than a sheet's arrays may fill."""
+        filled = 0
+        refused = dict(self._refused)
+        for place, cell in self._cells.items():
+            if cell.extent and cell.dynamic and (extent := self.engine.extent(place)):
+                filled += len(extent.rows) * len(extent.columns)
+                if filled > MOST_IN_ARRAYS:
+                    self.engine.refuse(place)
+                    self._refused[place] = _TOO_MANY
+        if self._refused != refused:
+            self._evaluate_again()
 
     def _spills(self, place: Place) -> bool:
         if self._cells[place].extent or place in self._refused:
@@ -216,7 +372,8 @@ class _Filling:
         """Return the sheets with their values, by the names of their parts."""
         count = len(self._layouts)
         values = _by_sheet(((place, one.value) for place, one in self._values.items()), count)
-        extents = _by_sheet(self._new_extents.items(), count)
+        resized = ((place, extent) for place, extent in self._new_extents.items() if place not in self.comparison.kept)
+        extents = _by_sheet(resized, count)
         return {
             sheet.part: filled(sheet.xml, layout, values[number], extents[number])
             for number, (sheet, layout) in enumerate(zip(self.package.sheets, self._layouts, strict=True))
@@ -224,18 +381,65 @@ class _Filling:
 
     def faults(self) -> Iterator[CellFault]:
         """Yield every cell in error, sheet by sheet."""
-        for place, (value, giver, why) in self._values.items():
-            if isinstance(value, ErrorValue):
-                why = why or reason(self.engine, place, giver, value)
-                yield self._fault(place, written(value)[1], why, self._formula(giver))
+        failing = {place: one for place, one in self._values.items() if isinstance(one.value, ErrorValue)}
+        kept = {
+            one.filled.place: _Value(value, one.node, why) for one in self.comparison.found for value, why in _kept(one)
+        }
+        for place, (value, giver, why) in sorted({**failing, **kept}.items()) if kept else failing.items():
+            assert isinstance(value, ErrorValue)
+            why = why or self._reasons.of(place, giver, value)
+            yield self._fault(place, written(value)[1], why, self._formula(giver))
         for number, layout in enumerate(self._layouts):
             for cell in layout.what_if_tables():
                 yield self._fault((number, *cell.place), cell.value, _WHAT_IF, "")
 
+    def differences(self) -> list[Difference]:
+        """Return the ordinary cells whose stored value is not the engine's, sheet by sheet."""
+        return [self._difference(one) for one in sorted(self.comparison.found, key=lambda one: one.filled.place)]
+
+    def _difference(self, one: Found) -> Difference:
+        number, row, column = one.filled.place
+        asks = _ASKS_TO_CALCULATE if one.kept and self._asks_to_be_calculated else ""
+        named = [self.engine.name(user) for user in one.users[:USERS]]
+        return Difference(
+            sheet=self.package.sheets[number].name,
+            cell=cell_name(row, column),
+            stored=shown(one.filled.stored),
+            computed=shown(one.filled.computed),
+            formula=self._formula(one.node),
+            volatile=one.volatile,
+            kept=one.kept,
+            reason="; ".join(filter(None, (one.reason, asks))),
+            used_by=named + ["..."] * (len(one.users) > USERS),
+        )
+
+    def stale(self) -> Iterator[tuple[str, str, CellValue, CellValue, str]]:
+        """Yield sheet, cell, stored and computed value and formula of what builds on beams and is stale or missing."""
+        for node, one in self.comparison.stale():
+            number, row, column = one.place
+            sheet = self.package.sheets[number].name
+            yield sheet, cell_name(row, column), shown(one.stored), shown(one.computed), self._formula(node)
+
+    def listed(self, faults: Iterable[CellFault]) -> list[ListedCell]:
+        """Return every beam cell for a report, sheet by sheet, an array being one."""
+        reasons = {(fault.sheet, fault.cell): fault for fault in faults}
+        return [self._listed(giver, reasons) for giver in self._cells if giver in self.beam_cells]
+
+    def _listed(self, giver: Place, faults: Mapping[tuple[str, str], CellFault]) -> ListedCell:
+        number, row, column = giver
+        sheet = self.package.sheets[number].name
+        extent = self._new_extents.get(giver) or self._cells[giver].extent or Area(row, column, row, column)
+        values = [[self._values[number, row, column].value for column in extent.columns] for row in extent.rows]
+        names = (cell_name(*place) for place in extent.cells())
+        failing = tuple(faults[sheet, name] for name in names if (sheet, name) in faults)
+        calls = () if self.calls is None else self.calls.of(giver)
+        return ListedCell(sheet, str(extent), self._formula(giver), values, failing, calls)
+
     @cached_property
     def _values(self) -> dict[Place, _Value]:
         """The value of every cell that is stored anew."""
-        return {place: value for giver in self._cells for place, value in self._values_from(giver)}
+        stored_anew = (giver for giver in self._cells if giver not in self.comparison.kept)
+        return {place: value for giver in stored_anew for place, value in self._values_from(giver)}
 
     def _values_from(self, giver: Place) -> Iterator[tuple[Place, _Value]]:
         number, row, column = giver
@@ -243,6 +447,7 @@ class _Filling:
         extent = cell.extent or Area(row, column, row, column)
         if cell.extent and cell.dynamic:
             extent = self.engine.extent(giver) or Area(row, column, row, column)
+            self._new_extents.pop(giver, None)
             if extent != cell.extent:
                 self._new_extents[giver] = extent
                 # The cells filled before are cleared; those that are filled anew or by others follow.
@@ -251,7 +456,7 @@ class _Filling:
         for place in ((number, *place) for place in extent.cells()):
             value = self.engine.value(place)
             if giver in self._refused:
-                yield place, _Value(value, giver, _NARROW)
+                yield place, _Value(value, giver, self._refused[giver])
             elif isinstance(value, str) and len(value) > LONGEST_TEXT:
                 yield place, _Value(ErrorValue(VALUE), giver, _TOO_LONG)
             else:
@@ -261,6 +466,11 @@ class _Filling:
         number, row, column = place
         return CellFault(self.package.sheets[number].name, cell_name(row, column), str(value), why, formula)
 
+    @cached_property
+    def _shared(self) -> dict[tuple[int, str], Cell]:
+        """The cell that has the formula which others share, by the number of its sheet and the formula's own."""
+        return {(place[0], cell.shared): cell for place, cell in self._cells.items() if cell.shared and cell.formula}
+
     def _formula(self, place: Place) -> str:
         """Return a cell's own formula; one that shares another cell's has it from there."""
         cell = self._cells[place]
@@ -268,15 +478,35 @@ class _Filling:
             return f"={cell.formula}"
         from openpyxl.formula.translate import Translator
 
-        first = next(one for one in self._layouts[place[0]].formulas() if one.shared == cell.shared)
+        first = self._shared[place[0], cell.shared]
         return str(Translator(f"={first.formula}", cell_name(*first.place)).translate_formula(cell_name(*cell.place)))
 
 
-def _layout(sheet: Sheet) -> Layout:
-    try:
-        return read(sheet.xml)
-    except SheetError as error:
-        raise NotAWorkbook(f"sheet {sheet.name} cannot be read: {error}") from error
+def _refers_to(references: Iterable[tuple[int, Area]], places: Collection[Place]) -> bool:
+    return any(place[0] == number and area.holds(*place[1:]) for number, area in references for place in places)
+
+
+def _kept(one: Found) -> Iterator[tuple[ErrorValue, str]]:
+    """Yield the error, if there is one, that a cell shows or would show which keeps its stored value."""
+    stored, computed = one.filled.stored, one.filled.computed
+    if one.kept and isinstance(stored, ErrorValue):
+        yield stored, f"it is the stored value, which is kept; evaluated here it is {written(computed)[1]}"
+    elif one.kept and isinstance(computed, ErrorValue):
+        yield computed, f"{one.reason}; its stored value {written(stored)[1]} is kept"
+
+
+def _layouts(sheets: Iterable[Sheet]) -> list[Layout]:
+    layouts: list[Layout] = []
+    formulas = 0
+    for sheet in sheets:
+        try:
+            layouts.append(read(sheet.xml))
+        except SheetError as error:
+            raise NotAWorkbook(f"sheet {sheet.name} cannot be read: {error}") from error
+        formulas += len(layouts[-1].cells)
+        if formulas > MOST_FORMULAS:
+            raise NotAWorkbook(f"it has more than {MOST_FORMULAS:,} formulas")
+    return layouts
 
 
 def _by_sheet(items: Iterable[tuple[Place, T]], count: int) -> list[dict[tuple[int, int], T]]:
@@ -289,5 +519,7 @@ def _by_sheet(items: Iterable[tuple[Place, T]], count: int) -> list[dict[tuple[i
 
 def _respelt_name(text: bytes, speller: Speller) -> bytes:
     """Return what a defined name stands for with its tables' areas in place of their names."""
+    if b"[" not in text:
+        return text
     plain, _ = speller.respell(unescape(text.decode()), "0,0,0")
     return escape(plain, quote=False).encode()

@@ -11,9 +11,16 @@ from collections.abc import Collection
 from dataclasses import dataclass, field
 from xml.parsers import expat
 
-from beamfuncs.hosts.grid import Area, area, column_number
+from beamfuncs.hosts.grid import LAST_COLUMN, LAST_ROW, Area, area, cell_name, column_number
 
 WHAT_IF = "dataTable"
+
+MOST_FORMULAS = 1_000_000
+"""A workbook may have so many cells with formulas."""
+MOST_IN_ARRAYS = 1_000_000
+"""The array formulas of a sheet may fill so many cells in all."""
+LARGEST_SHEET = 200_000_000
+"""So many cells may lie between the first of a sheet and its last in use, rows times columns."""
 
 _TAG = re.compile(rb"""<[^<>"']*(?:(?:"[^"]*"|'[^']*')[^<>"']*)*>""")
 _PREFIX = re.compile(rb"</?([^\s<>/:]*:)?")
@@ -81,7 +88,10 @@ class _Reader:
         self.layout = Layout()
         self._xml = xml
         self._whole_rows = whole_rows
-        self._extents: list[Area] = []
+        self._extents: dict[int, int] = {}
+        """The columns that arrays fill, and down to which row."""
+        self._in_arrays = 0
+        self._last_row = self._last_column = 0
         self._row = self._column = self._row_start = self._cell_start = 0
         self._attributes: dict[str, str] = {}
         self._cell: Cell | None = None
@@ -109,9 +119,13 @@ class _Reader:
             else:
                 letters = reference.rstrip("0123456789")
                 self._column, self._row = column_number(letters), int(reference[len(letters) :])
+            if self._column > self._last_column:
+                self._last_column = self._column
+            if self._row > self._last_row:
+                self._last_row = self._row
             self._cell_start = self._parser.CurrentByteIndex
             self._attributes = attributes
-            if self._row in self._whole_rows or self._extents:
+            if self._row in self._whole_rows or self._extents.get(self._column, 0) >= self._row:
                 self._keep_cell()
         elif tag == "v" and self._cell:
             self._cell.value_start = self._parser.CurrentByteIndex
@@ -128,7 +142,6 @@ class _Reader:
         elif tag == "row":
             self._row, self._column = int(attributes.get("r", self._row + 1)), 0
             self._row_start = self._parser.CurrentByteIndex
-            self._extents = [extent for extent in self._extents if extent.bottom >= self._row]
 
     def _end(self, name: str) -> None:
         tag, cell = self._names.get(name), self._cell
@@ -147,6 +160,7 @@ class _Reader:
         elif tag == "row":
             self.layout.rows[self._row] = self._row_start, self._finish(self._row_start)
         elif tag == "sheetData":
+            self._check_size()
             self.layout.end_of_data = self._parser.CurrentByteIndex
             self.layout.prefix = _prefix(self._xml, self.layout.end_of_data)
 
@@ -162,15 +176,28 @@ class _Reader:
         return self._cell
 
     def _keep(self, cell: Cell) -> None:
-        if (
-            cell.formula_start >= 0
-            or cell.row in self._whole_rows
-            or any(extent.holds(*cell.place) for extent in self._extents)
-        ):
-            cell.end = self._finish(cell.start)
-            self.layout.cells[cell.place] = cell
+        if cell.place in self.layout.cells:
+            raise SheetError(f"two of its cells are called {cell_name(*cell.place)}")
+        cell.end = self._finish(cell.start)
+        self.layout.cells[cell.place] = cell
+        if len(self.layout.cells) > MOST_FORMULAS:
+            raise SheetError(f"it has more than {MOST_FORMULAS:,} formulas")
         if cell.extent:
-            self._extents.append(cell.extent)
+            self._fill(cell.extent)
+
+    def _fill(self, extent: Area) -> None:
+        self._in_arrays += len(extent.rows) * len(extent.columns)
+        if self._in_arrays > MOST_IN_ARRAYS:
+            raise SheetError(f"its array formulas fill more than {MOST_IN_ARRAYS:,} cells, {extent} among them")
+        for column in extent.columns:
+            self._extents[column] = max(extent.bottom, self._extents.get(column, 0))
+
+    def _check_size(self) -> None:
+        if self._last_row > LAST_ROW or self._last_column > LAST_COLUMN:
+            raise SheetError("it has cells beyond the last row or column that a sheet can have")
+        if self._last_row * self._last_column > LARGEST_SHEET:
+            last = cell_name(self._last_row, self._last_column)
+            raise SheetError(f"its cells reach to {last}; delete the columns and rows that hold nothing")
 
     def _finish(self, start: int) -> int:
         """Return where the element ends that ends now.

@@ -1,34 +1,63 @@
-"""A workbook file as a package: its sheets and tables, and a copy with a few parts replaced.
+"""A workbook file as a package: its sheets and tables, and the file with a few parts replaced.
 
-Every part that is not replaced keeps its bytes: charts, drawings, macros, styles and all the rest.
+All that is not replaced keeps its packed bytes: charts, drawings, macros, styles and all the rest. Only
+parts that are read are ever unpacked.
 """
 
 from __future__ import annotations
 
-import io
-import os
 import posixpath
 import re
-import secrets
-import zipfile
-import zlib
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
-from typing import BinaryIO
 from xml.etree import ElementTree
 
+from beamfuncs.hosts import writing
+from beamfuncs.hosts.archive import MOST_BYTES, Archive
+from beamfuncs.hosts.archive import NotAWorkbook as NotAWorkbook
 from beamfuncs.hosts.formulas import Table
 from beamfuncs.hosts.grid import area
+from beamfuncs.hosts.markup import Encoding, plain, tree, written
 
 OLD_BINARY = b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1"
 ENCRYPTED = "EncryptedPackage".encode("utf-16-le")
-_DAMAGE = (zipfile.BadZipFile, zlib.error, EOFError, NotImplementedError, RuntimeError)
+ZIP = b"PK"
+CONTENT_TYPES = "[Content_Types].xml"
+_COMPUTED = {"worksheet", "sharedStrings", "styles"}
+"""The kinds of parts that a workbook is evaluated from."""
+_SIGNATURES = "_xmlsignatures/"
+_MARKUP = (".xml", ".rels")
 _CODED = re.compile("_x([0-9A-Fa-f]{4})_")
 
 
-class NotAWorkbook(ValueError):
-    """The file cannot be read as a workbook; the message says why in one line."""
+class Parts(Mapping[str, bytes]):
+    """The parts of a package by their names, those in XML as UTF-8 in whatever encoding they are written."""
+
+    def __init__(self, archive: Archive) -> None:
+        self.archive = archive
+        self._plain: dict[str, tuple[bytes, Encoding]] = {}
+
+    def __getitem__(self, name: str) -> bytes:
+        if not name.endswith(_MARKUP):
+            return self.archive[name]
+        if name not in self._plain:
+            packed = self.archive[name]
+            try:
+                self._plain[name] = plain(packed)
+            except NotAWorkbook as error:
+                raise NotAWorkbook(f"its part {name} cannot be read: {error}") from error
+        return self._plain[name][0]
+
+    def __iter__(self) -> Iterator[str]:
+        return iter(self.archive)
+
+    def __len__(self) -> int:
+        return len(self.archive)
+
+    def as_written(self, name: str, content: bytes) -> bytes:
+        """Return new content of a part in the part's own encoding."""
+        return written(content, self._plain[name][1]) if name in self._plain else content
 
 
 @dataclass(frozen=True)
@@ -44,8 +73,8 @@ class Sheet:
 class Package:
     """A workbook file, read: its parts, and the `sheets` and `tables` among them."""
 
-    entries: tuple[zipfile.ZipInfo, ...] = field(repr=False)
-    parts: Mapping[str, bytes] = field(repr=False)
+    path: Path
+    parts: Parts = field(repr=False)
     workbook_part: str
     sheets: tuple[Sheet, ...]
     tables: tuple[Table, ...]
@@ -54,18 +83,14 @@ class Package:
     @classmethod
     def read(cls, path: Path) -> Package:
         """Read a workbook, or raise `NotAWorkbook` or an OSError."""
+        if path.stat().st_size > MOST_BYTES:
+            raise NotAWorkbook(f"it is too large: more than {MOST_BYTES >> 20} MB")
         data = path.read_bytes()
-        if data.startswith(OLD_BINARY):
-            protected = "it is protected by a password; save it without one"
-            raise NotAWorkbook(protected if ENCRYPTED in data else "it is in an older binary format; save it as .xlsx")
+        if not data.startswith(ZIP):
+            raise NotAWorkbook(_instead(data))
+        parts = Parts(Archive(data))
         try:
-            with zipfile.ZipFile(io.BytesIO(data)) as archive:
-                entries = tuple(archive.infolist())
-                parts = {entry.filename: archive.read(entry) for entry in entries}
-        except _DAMAGE as error:
-            raise NotAWorkbook(f"it is not a workbook or is damaged ({error})") from error
-        try:
-            return cls(entries, parts, *_contents(parts))
+            return cls(path, parts, *_contents(parts))
         except KeyError as error:
             raise NotAWorkbook(f"it is not a workbook or is damaged (it has no {error.args[0]})") from error
         except NotAWorkbook:
@@ -73,33 +98,66 @@ class Package:
         except (ElementTree.ParseError, ValueError) as error:
             raise NotAWorkbook(f"its XML is damaged ({error})") from error
 
-    def copy(self, replaced: Mapping[str, bytes]) -> bytes:
-        """Return the package with the bytes of some parts replaced, uncompressed."""
-        stream = io.BytesIO()
-        self._copy_to(stream, replaced, compressed=False)
-        return stream.getvalue()
+    def computed_from(self) -> dict[str, bytes]:
+        """Return the parts that the workbook is evaluated from; all others are left packed."""
+        related = [target for kind, target in _relations(self.parts, self.workbook_part).values() if kind in _COMPUTED]
+        listed = [CONTENT_TYPES, _relations_part(""), self.workbook_part, _relations_part(self.workbook_part), *related]
+        wanted = {name.casefold() for name in listed}
+        return {name: self.parts[name] for name in self.parts if name.casefold() in wanted}
 
-    def write(self, target: Path, replaced: Mapping[str, bytes]) -> None:
-        """Write the package with the bytes of some parts replaced; the file appears complete or not at all."""
-        temporary = target.with_name(f".{target.name}.{secrets.token_hex(4)}")
-        try:
-            with temporary.open("xb") as stream:
-                self._copy_to(stream, replaced, compressed=True)
-                stream.flush()
-                os.fsync(stream.fileno())
-            temporary.replace(target)
-        except BaseException:
-            temporary.unlink(missing_ok=True)
-            raise
+    def write(self, target: Path, replaced: Mapping[str, bytes | None]) -> None:
+        """Write the package with the bytes of some parts replaced; the file appears complete or not at all.
 
-    def _copy_to(self, stream: BinaryIO, replaced: Mapping[str, bytes], compressed: bool) -> None:
-        with zipfile.ZipFile(stream, "w") as copy:
-            for entry in self.entries:
-                same = zipfile.ZipInfo(entry.filename, entry.date_time)
-                same.compress_type = entry.compress_type if compressed else zipfile.ZIP_STORED
-                same.external_attr = entry.external_attr
-                same.create_system = entry.create_system
-                copy.writestr(same, replaced.get(entry.filename, self.parts[entry.filename]))
+        A part that the package has not got is added to it, one replaced by None is left out. Where that
+        changes nothing, the file is the same to the last byte.
+        """
+        writing.replace(target, self._with(self._changed(replaced)))
+
+    def rewrite(self, replaced: Mapping[str, bytes | None]) -> Path | None:
+        """Write the package over the file it was read from, and return the dated copy of what stood there.
+
+        Where no byte would change the file is left alone and there is no copy.
+        """
+        changed = self._changed(replaced)
+        if not changed:
+            return None
+        kept: list[Path] = []
+
+        def ready() -> None:
+            if self.path.read_bytes() != self.parts.archive.data:
+                raise writing.NotWritten(f"{self.path}: was changed by another program meanwhile")
+            kept.append(writing.keep_dated(self.path, self.parts.archive.data))
+
+        writing.replace(self.path, self._with(changed), ready)
+        return kept[0]
+
+    def _changed(self, replaced: Mapping[str, bytes | None]) -> dict[str, bytes | None]:
+        """Return what is replaced by other bytes than stood there, each part in its own encoding."""
+        changed: dict[str, bytes | None] = {}
+        for name, content in replaced.items():
+            if content is None:
+                changed |= {name: None} if name in self.parts else {}
+            elif name not in self.parts or content != self.parts[name]:
+                changed[name] = self.parts.as_written(name, content)
+        if changed and any(name.casefold().startswith(_SIGNATURES) for name in self.parts):
+            raise NotAWorkbook("it is signed, and new values would break the signature; take the signature away first")
+        return changed
+
+    def _with(self, changed: Mapping[str, bytes | None]) -> Iterator[bytes]:
+        archive = self.parts.archive
+        return archive.with_contents(changed) if changed else iter([archive.data])
+
+
+def _instead(data: bytes) -> str:
+    """Return what a file is that is no package."""
+    if data.startswith(OLD_BINARY):
+        protected = "it is protected by a password; save it without one"
+        return protected if ENCRYPTED in data else "it is in an older binary format; save it as .xlsx"
+    if not data:
+        return "it is not a workbook but empty"
+    if b"\0" in data[:1000]:
+        return "it is not a workbook or is damaged (no zip file)"
+    return "it is not a workbook but text; open it in a spreadsheet program and save it as .xlsx"
 
 
 def _contents(parts: Mapping[str, bytes]) -> tuple[str, tuple[Sheet, ...], tuple[Table, ...], bool]:
@@ -108,7 +166,7 @@ def _contents(parts: Mapping[str, bytes]) -> tuple[str, tuple[Sheet, ...], tuple
     workbook_part = next((target for kind, target in root if kind == "officeDocument"), "workbook")
     if workbook_part.endswith(".bin"):
         raise NotAWorkbook("it is in a binary format; save it as .xlsx")
-    workbook = ElementTree.fromstring(parts[workbook_part])
+    workbook = tree(parts[workbook_part])
     if _tag(workbook) != "workbook":
         raise NotAWorkbook(f"it is not a workbook but a {_tag(workbook)}")
     related = _relations(parts, workbook_part)
@@ -121,7 +179,7 @@ def _contents(parts: Mapping[str, bytes]) -> tuple[str, tuple[Sheet, ...], tuple
         sheet = Sheet(element.get("name", ""), part, parts[part])
         sheets.append(sheet)
         tables += [
-            _table(ElementTree.fromstring(parts[target]), sheet.name)
+            _table(tree(parts[target]), sheet.name)
             for kind, target in _relations(parts, part).values()
             if kind == "table"
         ]
@@ -142,17 +200,22 @@ def _table(element: ElementTree.Element, sheet: str) -> Table:
 
 def _relations(parts: Mapping[str, bytes], part: str) -> dict[str, tuple[str, str]]:
     """Return kind and target of each relation of a part, by its id; of the package itself where it is blank."""
-    folder, name = posixpath.split(part)
-    listed = posixpath.join(folder, "_rels", f"{name}.rels")
+    folder = posixpath.dirname(part)
+    listed = _relations_part(part)
     if listed not in parts:
         return {}
     relations = {}
-    for element in ElementTree.fromstring(parts[listed]):
+    for element in tree(parts[listed]):
         if element.get("TargetMode") != "External":
             kind = element.get("Type", "").rpartition("/")[2]
             target = posixpath.normpath(posixpath.join("/", folder, element.get("Target", "")))
             relations[element.get("Id", "")] = kind, target.lstrip("/")
     return relations
+
+
+def _relations_part(part: str) -> str:
+    folder, name = posixpath.split(part)
+    return posixpath.join(folder, "_rels", f"{name}.rels")
 
 
 def _children(element: ElementTree.Element, name: str) -> Iterator[ElementTree.Element]:

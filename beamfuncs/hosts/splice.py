@@ -43,7 +43,7 @@ def for_engine(xml: bytes, layout: Layout, spelling: Mapping[tuple[int, int], st
             splices.append((cell.start, cell.end, _new_cell(prefix, place)))
         else:
             splices.append((cell.formula_start, cell.formula_end, b""))
-    return _spliced(xml, splices)
+    return spliced(xml, splices)
 
 
 def filled(
@@ -68,7 +68,7 @@ def filled(
     ]
     splices += [_resize(xml, layout.cells[place], extent) for place, extent in extents.items()]
     splices += _insert(xml, layout, {place: values[place] for place in sorted(missing)})
-    return _spliced(xml, splices)
+    return spliced(xml, splices)
 
 
 def written(value: CellValue) -> tuple[str, str]:
@@ -156,7 +156,8 @@ def _insert(xml: bytes, layout: Layout, values: Mapping[tuple[int, int], CellVal
             yield at, at, new
 
 
-def _spliced(xml: bytes, splices: Iterable[Splice]) -> bytes:
+def spliced(xml: bytes, splices: Iterable[Splice]) -> bytes:
+    """Return XML with some of its bytes replaced, in any order."""
     pieces: list[bytes] = []
     position = 0
     for start, end, new in sorted(splices, key=lambda splice: splice[:2]):

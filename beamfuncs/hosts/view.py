@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
+import io
 from datetime import date
+from itertools import chain
 from pathlib import Path
-from typing import NamedTuple
-from xml.etree import ElementTree
+from typing import Any, NamedTuple
 
-from beamfuncs.hosts.grid import area, column_name
+from beamfuncs.hosts.grid import LAST_COLUMN, LAST_ROW, Area, area, column_name
+from beamfuncs.hosts.markup import tree
 from beamfuncs.hosts.package import Package
+from beamfuncs.hosts.plain import packed
 
 DIGITS = 6
 
@@ -25,7 +28,7 @@ def find(package: Package, name: str) -> View | None:
     sheets = {sheet.name.casefold(): sheet.name for sheet in package.sheets}
     if name.casefold() in sheets:
         return View(sheets[name.casefold()], None)
-    for element in ElementTree.fromstring(package.parts[package.workbook_part]).iter():
+    for element in tree(package.parts[package.workbook_part]).iter():
         if element.tag.endswith("}definedName") and element.get("name", "").casefold() == name.casefold():
             name = element.text or ""
     sheet, _, cells = name.rpartition("!")
@@ -43,13 +46,18 @@ def rows(book: Path, view: View) -> list[list[str]]:
     """
     import openpyxl
 
-    sheet = openpyxl.load_workbook(book, data_only=True)[view.sheet]
-    first = area(view.area or sheet.dimensions)
-    values = sheet.iter_rows(first.top, first.bottom, first.left, first.right, values_only=True)
-    cells = [[_text(value) for value in row] for row in values]
-    columns = [c for c in range(len(first.columns)) if any(row[c] for row in cells)]
-    letters = ["", *(column_name(first.left + c) for c in columns)]
-    return [letters, *([str(first.top + r), *(row[c] for c in columns)] for r, row in enumerate(cells) if any(row))]
+    parts = packed(Package.read(book).computed_from())
+    loaded = openpyxl.load_workbook(io.BytesIO(parts), read_only=True, data_only=True, keep_links=False)
+    sheet: Any = loaded[view.sheet]
+    sheet.reset_dimensions()
+    wanted = area(view.area) if view.area else Area(1, 1, LAST_ROW, LAST_COLUMN)
+    filled: dict[int, dict[int, str]] = {}
+    for cell in chain.from_iterable(sheet.iter_rows()):
+        if (text := _text(cell.value)) and wanted.holds(cell.row, cell.column):
+            filled.setdefault(cell.row, {})[cell.column] = text
+    columns = sorted(set().union(*filled.values()))
+    letters = ["", *map(column_name, columns)]
+    return [letters, *([str(row), *(texts.get(c, "") for c in columns)] for row, texts in filled.items())]
 
 
 def _text(value: object) -> str:
