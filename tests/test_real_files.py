@@ -42,6 +42,9 @@ FALSE_NUMBERS = {("CEILING.xlsx", "A3"), ("CEILING.xlsx", "A9"), ("DATE.xlsx", "
 }
 """Those of them where the miss is a number: the others are errors, or texts."""
 
+LAST_ROW = 1_048_576
+APART = "BZ"
+"""A column to which no formula of those workbooks refers."""
 RELATIVE = 1e-9
 
 
@@ -239,12 +242,16 @@ def test_a_beam_in_a_workbook_of_others_is_all_that_is_filled(outcomes: list[Out
         if refusal:
             continue
         contents = parts(source)
-        sheet = next(name for name in sheets(source) if b"row" in contents[name])
+        sheet = next(
+            (name for name, title in sheets(source).items() if title and b"</sheetData>" in contents[name]), None
+        )
+        if sheet is None:
+            continue
         rows = [int(row) for row in re.findall(rb'<row\b[^>]*?\sr="(\d+)"', contents[sheet])]
-        if not rows or b"</sheetData>" not in contents[sheet]:
+        if not rows or max(rows) > LAST_ROW - 2:
             continue
         before, formula, after = (
-            f'<row r="{max(rows) + 2}"><c r="A{max(rows) + 2}">',
+            f'<row r="{max(rows) + 2}"><c r="{APART}{max(rows) + 2}">',
             '<f>reaction("fixed 8 pinned","udl 12",1)</f>',
             "</c></row></sheetData>",
         )
