@@ -24,10 +24,10 @@ if TYPE_CHECKING:
     from rich.console import Console
 
     from beamfuncs.catalogue import Entry
-    from beamfuncs.hosts.checking import Checked
-    from beamfuncs.hosts.headless import CellFault, Report
-    from beamfuncs.hosts.stored import Difference
-    from beamfuncs.hosts.view import View
+    from beamfuncs.hosts.headless.checking import Checked
+    from beamfuncs.hosts.headless.filling import CellFault, Report
+    from beamfuncs.hosts.headless.stored import Difference
+    from beamfuncs.hosts.headless.view import View
 
 DONE, DONE_WITH_ERRORS, NOTHING_DONE = 0, 1, 2
 LISTED = 50
@@ -105,15 +105,15 @@ def fill(
 
     Exit status: 0 done; 1 done, but some cell has an error; 2 nothing done.
     """
-    from beamfuncs.hosts import headless
+    from beamfuncs.hosts.headless import filling
 
     if in_place and out:
         _give_up("--in-place and --out exclude each other: the workbook is filled itself, or a copy of it")
     try:
-        view = headless.view_of(book, show) if show else None
+        view = filling.view_of(book, show) if show else None
         with _progress_bar() as progress:
-            report = headless.fill(book, out, progress=progress, in_place=in_place, listing=listing, trust=trust)
-    except headless.NotFilled as error:
+            report = filling.fill(book, out, progress=progress, in_place=in_place, listing=listing, trust=trust)
+    except filling.NotFilled as error:
         _give_up(str(error))
     except KeyboardInterrupt:
         _give_up("interrupted: nothing was written")
@@ -141,12 +141,12 @@ def freeze(
     Each formula is kept in a note on its cell; all other formulas stay live.
     Exit status: 0 done; 1 done, but some cell has an error; 2 nothing done.
     """
-    from beamfuncs.hosts import headless
+    from beamfuncs.hosts.headless import filling
 
     try:
         with _progress_bar() as progress:
-            report = headless.fill(book, out, progress=progress, trust=trust, freeze=True)
-    except headless.NotFilled as error:
+            report = filling.fill(book, out, progress=progress, trust=trust, freeze=True)
+    except filling.NotFilled as error:
         _give_up(str(error))
     except KeyboardInterrupt:
         _give_up("interrupted: nothing was written")
@@ -169,7 +169,7 @@ def check(
     Exit status: 0 all are; 1 a beam cell or one that builds on it is stale or stores nothing, or a cell has an
     error; 2 a file cannot be read.
     """
-    from beamfuncs.hosts.checking import check_all, workbooks
+    from beamfuncs.hosts.headless.checking import check_all, workbooks
 
     found: list[Checked] = []
     try:
@@ -221,7 +221,7 @@ def _print_view(book: Path, view: View) -> None:
     from rich.table import Table
     from rich.text import Text
 
-    from beamfuncs.hosts.view import rows
+    from beamfuncs.hosts.headless.view import rows
 
     head, *body = rows(book, view)
     table = Table(box=SIMPLE_HEAD)
@@ -256,7 +256,7 @@ def _print_checked(checked: Checked) -> None:
     from rich.console import Console
     from rich.text import Text
 
-    from beamfuncs.hosts import telling
+    from beamfuncs.hosts.headless import telling
 
     console = Console(highlight=False, soft_wrap=True)
     told = telling.summary(checked), "green" if checked.passes else "red"
@@ -280,7 +280,7 @@ def _print_differences(console: Console, differences: list[Difference]) -> None:
     """Print whose stored value is not the computed one, those that depend on volatile functions apart."""
     from rich.text import Text
 
-    from beamfuncs.hosts import telling
+    from beamfuncs.hosts.headless import telling
 
     for volatile in (False, True):
         listed = [one for one in differences if one.volatile is volatile]

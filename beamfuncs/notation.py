@@ -24,7 +24,7 @@ from beamfuncs.cells import (
 from beamfuncs.errors import BeamError, impossible, quoted, unreadable
 from beamfuncs.loads import LOAD_ALIASES, LOAD_KINDS, Clause, Combination, Loads
 
-CACHED = 4096
+CACHED = 20_480
 """How many readings of each kind are kept: beams, loads, combinations."""
 
 _EXAMPLE = "e.g. 'fixed 8 pinned'"

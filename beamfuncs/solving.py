@@ -11,8 +11,9 @@ from beamfuncs.notation import read_beam, read_combination, read_loads
 from beamfuncs.results import Result
 from beamfuncs.stiffness import Solution, solve
 
-KEPT = 4096
-"""How many solved beams, and how many of their combinations, are kept."""
+KEPT = 20_480
+"""How many solved beams, and how many of their combinations, are kept: a workbook asks column by column, so that all
+beams of a column must be. An entry takes 12 kB for one span, 50 kB for twenty."""
 
 _HASHED = frozenset({str, float, int, type(None)})
 

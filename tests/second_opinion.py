@@ -6,7 +6,7 @@ from pathlib import Path
 
 import pytest
 
-from beamfuncs.hosts.grid import cell_name
+from beamfuncs.hosts.headless.grid import cell_name
 
 
 def second_opinion(path: Path) -> dict[tuple[str, str], object] | None:

@@ -19,11 +19,11 @@ from books import build, values
 from typer.testing import CliRunner
 
 from beamfuncs import cli
-from beamfuncs.hosts import writing
-from beamfuncs.hosts.archive import Archive
-from beamfuncs.hosts.checking import workbooks
-from beamfuncs.hosts.headless import NotFilled, fill
-from beamfuncs.hosts.writing import LEFT_OVER, is_no_input
+from beamfuncs.hosts.headless import writing
+from beamfuncs.hosts.headless.archive import Archive
+from beamfuncs.hosts.headless.checking import workbooks
+from beamfuncs.hosts.headless.filling import NotFilled, fill
+from beamfuncs.hosts.headless.writing import LEFT_OVER, is_no_input
 
 resource = pytest.importorskip("resource", reason="NOT RUN: this system bounds no process")
 

@@ -11,8 +11,8 @@ from battery import CORE, DAYS_TO_1904, EXTRA, SPILLS, Case, build, row_of
 from books import values
 from second_opinion import second_opinion
 
-from beamfuncs.hosts.grid import area, cell_name
-from beamfuncs.hosts.headless import Report, fill
+from beamfuncs.hosts.headless.filling import Report, fill
+from beamfuncs.hosts.headless.grid import area, cell_name
 
 MISSES = {
     '="x"&2/3': "x0.6666666666666666",  # 16 digits where a spreadsheet joins 15

@@ -11,8 +11,8 @@ from typer.testing import CliRunner
 
 from beamfuncs.cli import app
 from beamfuncs.functions import reaction
-from beamfuncs.hosts.checking import check, workbooks
-from beamfuncs.hosts.headless import fill
+from beamfuncs.hosts.headless.checking import check, workbooks
+from beamfuncs.hosts.headless.filling import fill
 from beamfuncs.trust import Trust
 
 BEAM = {"A1": "fixed 8 pinned", "B1": "udl 12", "C1": "=reaction(A1,B1,1)", "D1": "=C1/2", "E1": "=1+1"}

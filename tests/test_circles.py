@@ -6,7 +6,7 @@ from pathlib import Path
 
 from books import build
 
-from beamfuncs.hosts.headless import fill
+from beamfuncs.hosts.headless.filling import fill
 
 
 def reasons(path: Path, cells: dict[str, object]) -> dict[str, str]:

@@ -18,7 +18,7 @@ from beamfuncs import cli
 from beamfuncs.catalogue import catalogue
 from beamfuncs.cli import app
 from beamfuncs.functions import reaction
-from beamfuncs.hosts import headless
+from beamfuncs.hosts.headless import filling
 
 BEAM = {"A1": "fixed 8 pinned", "B1": "udl 12"}
 GOOD = BEAM | {"C1": "=reaction(A1,B1,1)", "D1": "=C1/2"}
@@ -116,7 +116,7 @@ def test_an_interrupted_fill_is_nothing_done(tmp_path: Path, monkeypatch: pytest
     def interrupted(*_: object, **__: object) -> None:
         raise KeyboardInterrupt
 
-    monkeypatch.setattr(headless, "fill", interrupted)
+    monkeypatch.setattr(filling, "fill", interrupted)
     assert run("fill", tmp_path / "plan.xlsx") == (2, "", "beamfuncs: interrupted: nothing was written\n")
 
 

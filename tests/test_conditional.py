@@ -7,8 +7,8 @@ from pathlib import Path
 import pytest
 from books import build, values
 
-from beamfuncs.hosts.conditional import guarded
-from beamfuncs.hosts.headless import fill
+from beamfuncs.hosts.headless.conditional import guarded
+from beamfuncs.hosts.headless.filling import fill
 
 PADS = {
     **{f"A{row}": pad for row, pad in enumerate(["P1", "P2", "P1", "P3", "P2"], 1)},

@@ -12,8 +12,8 @@ from hypothesis import given, settings
 
 from beamfuncs.errors import BeamError
 from beamfuncs.functions import deflection_max, moment_at, moment_max, moment_min, shear_max, shear_min
-from beamfuncs.hosts.canvas import FONT_SIZE, LINE_HEIGHT, Box, Canvas, width_of
-from beamfuncs.hosts.drawing import MARGIN, MOMENT_COLOUR, MOST_LOADS, SHEAR_COLOUR, WIDTH, drawing
+from beamfuncs.hosts.headless.canvas import FONT_SIZE, LINE_HEIGHT, Box, Canvas, width_of
+from beamfuncs.hosts.headless.drawing import MARGIN, MOMENT_COLOUR, MOST_LOADS, SHEAR_COLOUR, WIDTH, drawing
 
 SVG = "{http://www.w3.org/2000/svg}"
 MANY = "; ".join(f"point {n} at {n / 10}" for n in range(1, 70))

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import pytest
 
-from beamfuncs.hosts.formulas import Speller, Table, plain_reference
-from beamfuncs.hosts.grid import Area, area, cell_name, column_name, column_number
-from beamfuncs.hosts.names import Name, Names
+from beamfuncs.hosts.headless.formulas import Speller, Table, plain_reference
+from beamfuncs.hosts.headless.grid import Area, area, cell_name, column_name, column_number
+from beamfuncs.hosts.headless.names import Name, Names
 
 BEAMS = Table("Beams", "Bo's plan", Area(2, 3, 7, 6), ("Mark", "Span", "Load [kN/m]", "No. #"), total_rows=1)
 HERE = "'Bo''s plan'!"

@@ -19,7 +19,7 @@ from test_headless import FUNCTIONS
 
 from beamfuncs.errors import BeamError
 from beamfuncs.functions import moment_max, reaction, reactions
-from beamfuncs.hosts.headless import NotFilled, Report, fill
+from beamfuncs.hosts.headless.filling import NotFilled, Report, fill
 
 BEAM = {"A1": "fixed 8 pinned", "B1": "udl 12"}
 COMMENTS = "xl/comments/comment1.xml"

@@ -5,8 +5,8 @@ from __future__ import annotations
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from beamfuncs.hosts.graph import IN_CIRCLE, Graph, Place, Reference
-from beamfuncs.hosts.grid import Area
+from beamfuncs.hosts.headless.graph import IN_CIRCLE, Graph, Place, Reference
+from beamfuncs.hosts.headless.grid import Area
 
 ROWS, COLUMNS = 6, 3
 CELLS = [(0, row, column) for row in range(1, ROWS + 1) for column in range(1, COLUMNS + 1)]

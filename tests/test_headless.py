@@ -17,7 +17,7 @@ from openpyxl.worksheet.table import Table
 
 from beamfuncs.errors import BeamError, ErrorValue
 from beamfuncs.functions import deflection_max, diagram, moment_at, moment_max, reaction, reactions
-from beamfuncs.hosts.headless import CellFault, NotFilled, Report, fill
+from beamfuncs.hosts.headless.filling import CellFault, NotFilled, Report, fill
 
 UNREADABLE = BeamError("#VALUE!", "beam: 'nonsense' is no beam")
 ABSENT = BeamError("#N/A", "x: beyond the end")

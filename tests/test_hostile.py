@@ -16,10 +16,10 @@ from openpyxl.worksheet.table import Table
 from typer.testing import CliRunner
 
 from beamfuncs import cli
-from beamfuncs.hosts import archive, headless, package
-from beamfuncs.hosts.bounds import DEEPEST_NESTING, LONGEST_FORMULA
-from beamfuncs.hosts.headless import NotFilled, Report, fill
-from beamfuncs.hosts.layout import MOST_IN_ARRAYS
+from beamfuncs.hosts.headless import archive, filling, package
+from beamfuncs.hosts.headless.bounds import DEEPEST_NESTING, LONGEST_FORMULA
+from beamfuncs.hosts.headless.filling import NotFilled, Report, fill
+from beamfuncs.hosts.headless.layout import MOST_IN_ARRAYS
 
 FUNCTIONS: dict[str, Callable[..., object]] = {"twice": lambda number: 2 * float(number)}
 WORKBOOK, TEXTS = "xl/workbook.xml", "xl/sharedStrings.xml"
@@ -391,14 +391,14 @@ def test_an_array_that_spills_beyond_measure(tmp_path: Path) -> None:
 
 def test_arrays_that_spill_beyond_measure_together(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     """Of spilling arrays that fill too many cells in all, those beyond the bound are errors and cleared."""
-    monkeypatch.setattr(headless, "MOST_IN_ARRAYS", 100)
+    monkeypatch.setattr(filling, "MOST_IN_ARRAYS", 100)
     cells = "".join(
         f'<c r="{column}1" cm="1"><f t="array" ref="{column}1:{column}2">SEQUENCE(40)</f></c>' for column in "ABC"
     )
     rows = f'<row r="1">{cells}<c r="J1"><f>SUM(A1:A40)</f></c><c r="K1"><f>SUM(C1:C40)</f></c></row>'
     rows += '<row r="2"><c r="B2"><v>7</v></c><c r="C2"><v>7</v></c></row>'
     report = fill(from_xml(tmp_path / "book.xlsx", rows), functions=FUNCTIONS)
-    assert reasons(report) == {"C1": headless._TOO_MANY, "K1": "takes #VALUE! from Plan!C1"}
+    assert reasons(report) == {"C1": filling._TOO_MANY, "K1": "takes #VALUE! from Plan!C1"}
     got = values(report.target)
     assert [got.get(cell) for cell in ("A40", "B40", "C2", "J1", "K1")] == [40, 40, None, 820, "#VALUE!"]
     assert b'<f t="array" ref="C1">' in parts(report.target)[FIRST_SHEET]

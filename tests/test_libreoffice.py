@@ -14,7 +14,7 @@ from test_real_files import Outcome, filled_or_refused
 from unfilled import Value, sheets, stored
 
 from beamfuncs.catalogue import catalogue
-from beamfuncs.hosts.headless import fill
+from beamfuncs.hosts.headless.filling import fill
 
 KESTREL_QUAY = Path(__file__).parent.parent / "workbooks" / "kestrel_quay.xlsx"
 RELATIVE = 1e-9

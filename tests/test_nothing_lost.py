@@ -21,8 +21,8 @@ from openpyxl.styles import PatternFill
 from openpyxl.worksheet.datavalidation import DataValidation
 from openpyxl.worksheet.formula import ArrayFormula
 
-from beamfuncs.hosts.headless import NotFilled, Report, fill
-from beamfuncs.hosts.package import NotAWorkbook, Package
+from beamfuncs.hosts.headless.filling import NotFilled, Report, fill
+from beamfuncs.hosts.headless.package import NotAWorkbook, Package
 
 SCHEDULE = Path(__file__).parent.parent / "workbooks" / "kestrel_quay.xlsx"
 

@@ -10,9 +10,9 @@ import pytest
 from books import build, parts, rewrite
 from openpyxl.worksheet.table import Table
 
-from beamfuncs.hosts import package, writing
-from beamfuncs.hosts.grid import Area
-from beamfuncs.hosts.package import NotAWorkbook, Package
+from beamfuncs.hosts.headless import package, writing
+from beamfuncs.hosts.headless.grid import Area
+from beamfuncs.hosts.headless.package import NotAWorkbook, Package
 
 WORKBOOK = "xl/workbook.xml"
 

@@ -11,8 +11,8 @@ from pathlib import Path
 import pytest
 from books import MAIN, build, parts
 
-from beamfuncs.hosts.headless import fill
-from beamfuncs.hosts.plain import packed
+from beamfuncs.hosts.headless.filling import fill
+from beamfuncs.hosts.headless.plain import packed
 
 STRICT = {
     MAIN: "http://purl.oclc.org/ooxml/spreadsheetml/main",

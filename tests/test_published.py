@@ -13,7 +13,7 @@ import pytest
 from scipy.optimize import minimize_scalar
 
 from beamfuncs.functions import beam_result, contraflexure
-from beamfuncs.hosts.headless import fill
+from beamfuncs.hosts.headless.filling import fill
 
 Row = dict[str, Any]
 Ask = dict[str, Any]

@@ -14,7 +14,7 @@ from hypothesis import strategies as st
 
 from beamfuncs.errors import BeamError, ErrorValue
 from beamfuncs.functions import beam_line, deflection_at, load_line, moment_at, moment_max, reaction, shear_min
-from beamfuncs.hosts.headless import fill
+from beamfuncs.hosts.headless.filling import fill
 
 SHEETS = ("Plan", "Roof 2", "Bo's")
 ERROR = ErrorValue("#VALUE!")

@@ -15,7 +15,7 @@ from real_files import NotFetchedError, workbooks
 from second_opinion import second_opinion
 from unfilled import Value, sheets, stored, without_values
 
-from beamfuncs.hosts.headless import NotFilled, fill
+from beamfuncs.hosts.headless.filling import NotFilled, fill
 
 FEWEST = 100
 REFUSED = {

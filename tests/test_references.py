@@ -11,7 +11,7 @@ from books import build, formulas, from_xml, rewrite, values
 from openpyxl.workbook.defined_name import DefinedName
 from openpyxl.worksheet.table import Table
 
-from beamfuncs.hosts.headless import CellFault, fill
+from beamfuncs.hosts.headless.filling import CellFault, fill
 
 LINE, LOADS = "pinned 6 roller", "udl 4"
 """Reactions of 12, a moment of 18."""

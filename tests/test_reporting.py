@@ -22,10 +22,10 @@ from test_headless import FUNCTIONS
 from beamfuncs import cli
 from beamfuncs.errors import BeamError
 from beamfuncs.functions import beam_reads, loads_read, moment_max, reaction, reactions
-from beamfuncs.hosts import page
-from beamfuncs.hosts.calls import Calls
-from beamfuncs.hosts.engine import Call
-from beamfuncs.hosts.headless import NotFilled, fill
+from beamfuncs.hosts.headless import page
+from beamfuncs.hosts.headless.calls import Calls
+from beamfuncs.hosts.headless.engine import Call
+from beamfuncs.hosts.headless.filling import NotFilled, fill
 
 LINE, LOADS = "fixed 8 pinned", "G: udl 12; Q: point 40 at 3"
 BEAM = {"A1": LINE, "B1": LOADS, "C1": 24000}

@@ -9,9 +9,9 @@ import pytest
 from books import MAIN
 
 from beamfuncs.errors import ErrorValue
-from beamfuncs.hosts.grid import Area
-from beamfuncs.hosts.layout import SheetError, read
-from beamfuncs.hosts.splice import CellValue, filled, for_engine, written
+from beamfuncs.hosts.headless.grid import Area
+from beamfuncs.hosts.headless.layout import SheetError, read
+from beamfuncs.hosts.headless.splice import CellValue, filled, for_engine, written
 
 HEAD = f'<worksheet xmlns="{MAIN}"><sheetData>'
 TAIL = "</sheetData></worksheet>"

@@ -10,8 +10,8 @@ from books import FIRST_SHEET, build, from_xml, parts, rewrite, store, values
 from openpyxl.worksheet.formula import ArrayFormula
 
 from beamfuncs.errors import ErrorValue
-from beamfuncs.hosts.headless import CellFault, Report, fill
-from beamfuncs.hosts.stored import Difference, agree
+from beamfuncs.hosts.headless.filling import CellFault, Report, fill
+from beamfuncs.hosts.headless.stored import Difference, agree
 from beamfuncs.trust import Trust
 
 BOTH = pytest.mark.parametrize("trust", list(Trust))

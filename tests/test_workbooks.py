@@ -20,7 +20,7 @@ from openpyxl.worksheet.worksheet import Worksheet
 from schedule_by_hand import FORMS, SUPPORTS, TABLED, Answer, Row, loading, worked
 
 from beamfuncs.functions import beam_result, diagram, reaction, reaction_moment
-from beamfuncs.hosts.headless import Report, fill
+from beamfuncs.hosts.headless.filling import Report, fill
 
 WORKBOOKS = Path(__file__).parents[1] / "workbooks"
 SCRIPT, COMMITTED = WORKBOOKS / "kestrel_quay.py", WORKBOOKS / "kestrel_quay.xlsx"

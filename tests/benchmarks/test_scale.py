@@ -28,7 +28,7 @@ began = time.process_time()
 from collections import defaultdict
 from functools import wraps
 from beamfuncs import cli, functions
-from beamfuncs.hosts import engine, headless, package
+from beamfuncs.hosts.headless import engine, filling, package
 
 spent, open_since = defaultdict(float), [["start", began]]
 
@@ -57,13 +57,13 @@ def time_all(owner, name, *attributes):
 
 time_all(package.Package, "file", "write")
 package.Package.read = staticmethod(timed("file", package.Package.read))
-time_all(headless, "file", "read", "for_engine", "packed", "filled")
+time_all(filling, "file", "read", "for_engine", "packed", "filled")
 time_all(engine.Engine, "engine", "__init__", "evaluate", "value", "extent")
-time_all(headless.Filling, "stored values", "settle")
-ours = {name: timed("beam functions", function) for name, function in headless.catalogued().items()}
+time_all(filling.Filling, "stored values", "settle")
+ours = {name: timed("beam functions", function) for name, function in filling.catalogued().items()}
 gc.set_threshold(*cli.COLLECTED)
 switch("rest")
-headless.fill(sys.argv[1], sys.argv[2], ours)
+filling.fill(sys.argv[1], sys.argv[2], ours)
 switch(None)
 print(json.dumps(spent))
 """

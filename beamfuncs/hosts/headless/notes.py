@@ -10,10 +10,10 @@ from collections.abc import Mapping
 from html import escape
 from xml.parsers import expat
 
-from beamfuncs.hosts.grid import area, cell_name
-from beamfuncs.hosts.package import NotAWorkbook
-from beamfuncs.hosts.splice import Splice, spliced, written
-from beamfuncs.hosts.wiring import DECLARATION, Wiring
+from beamfuncs.hosts.headless.grid import area, cell_name
+from beamfuncs.hosts.headless.package import NotAWorkbook
+from beamfuncs.hosts.headless.splice import Splice, spliced, written
+from beamfuncs.hosts.headless.wiring import DECLARATION, Wiring
 
 AUTHOR = "beamfuncs"
 IDS_IN_A_BLOCK = 1024

@@ -8,15 +8,15 @@ from functools import partial
 from html import escape, unescape
 from typing import TYPE_CHECKING
 
-from beamfuncs.hosts.grid import Area, area, cell_name
-from beamfuncs.hosts.layout import Cell, opening, read
-from beamfuncs.hosts.notes import noted
-from beamfuncs.hosts.package import Package
-from beamfuncs.hosts.splice import Splice, spliced
-from beamfuncs.hosts.wiring import Wiring
+from beamfuncs.hosts.headless.grid import Area, area, cell_name
+from beamfuncs.hosts.headless.layout import Cell, opening, read
+from beamfuncs.hosts.headless.notes import noted
+from beamfuncs.hosts.headless.package import Package
+from beamfuncs.hosts.headless.splice import Splice, spliced
+from beamfuncs.hosts.headless.wiring import Wiring
 
 if TYPE_CHECKING:
-    from beamfuncs.hosts.headless import ListedCell
+    from beamfuncs.hosts.headless.filling import ListedCell
 
 MOST_FAULTS = 100
 """Of an array with more cells in error, the first have a note of their own."""

@@ -13,7 +13,7 @@ from collections import defaultdict
 from collections.abc import Callable, Collection, Iterable, Iterator, Mapping
 from typing import TypeAlias
 
-from beamfuncs.hosts.grid import Area
+from beamfuncs.hosts.headless.grid import Area
 
 Place: TypeAlias = "tuple[int, int, int]"
 """The number of a sheet, the row and the column of a cell."""

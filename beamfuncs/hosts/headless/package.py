@@ -13,12 +13,12 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from xml.etree import ElementTree
 
-from beamfuncs.hosts import writing
-from beamfuncs.hosts.archive import MOST_BYTES, Archive
-from beamfuncs.hosts.archive import NotAWorkbook as NotAWorkbook
-from beamfuncs.hosts.formulas import Table
-from beamfuncs.hosts.grid import area
-from beamfuncs.hosts.markup import Encoding, plain, tree, written
+from beamfuncs.hosts.headless import writing
+from beamfuncs.hosts.headless.archive import MOST_BYTES, Archive
+from beamfuncs.hosts.headless.archive import NotAWorkbook as NotAWorkbook
+from beamfuncs.hosts.headless.formulas import Table
+from beamfuncs.hosts.headless.grid import area
+from beamfuncs.hosts.headless.markup import Encoding, plain, tree, written
 
 OLD_BINARY = b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1"
 ENCRYPTED = "EncryptedPackage".encode("utf-16-le")

@@ -16,10 +16,10 @@ from typing import NamedTuple, TypeAlias
 import formualizer as fz
 
 from beamfuncs.errors import NA, NUM, VALUE, BeamError, ErrorValue
-from beamfuncs.hosts.conditional import CRITERION, UNLIKE
-from beamfuncs.hosts.formulas import ELSEWHERE, REF, TOLD
-from beamfuncs.hosts.grid import Area, area, cell_name, sheet_prefix
-from beamfuncs.hosts.splice import CellValue
+from beamfuncs.hosts.headless.conditional import CRITERION, UNLIKE
+from beamfuncs.hosts.headless.formulas import ELSEWHERE, REF, TOLD
+from beamfuncs.hosts.headless.grid import Area, area, cell_name, sheet_prefix
+from beamfuncs.hosts.headless.splice import CellValue
 
 Function: TypeAlias = Callable[..., object]
 Place: TypeAlias = "tuple[int, int, int]"

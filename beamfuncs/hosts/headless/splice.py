@@ -9,8 +9,8 @@ from collections.abc import Iterable, Mapping
 from typing import TypeAlias
 
 from beamfuncs.errors import VALUE, ErrorValue
-from beamfuncs.hosts.grid import Area, cell_name
-from beamfuncs.hosts.layout import Cell, Layout, opening, read
+from beamfuncs.hosts.headless.grid import Area, cell_name
+from beamfuncs.hosts.headless.layout import Cell, Layout, opening, read
 
 CellValue: TypeAlias = "float | str | bool | ErrorValue | None"
 Splice: TypeAlias = "tuple[int, int, bytes]"

@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import Literal, TypeAlias
 
 from beamfuncs.beam import Beam, Mark
-from beamfuncs.hosts.canvas import Box, Canvas, Point
+from beamfuncs.hosts.headless.canvas import Box, Canvas, Point
 
 End: TypeAlias = "Literal[-1, 0, 1]"
 """Whether a mark stands at the left end of the beam, inside, or at the right end."""

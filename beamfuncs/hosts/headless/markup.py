@@ -9,7 +9,7 @@ import re
 from typing import NamedTuple
 from xml.etree import ElementTree
 
-from beamfuncs.hosts.archive import NotAWorkbook
+from beamfuncs.hosts.headless.archive import NotAWorkbook
 
 _MARKS = {b"\xef\xbb\xbf": "utf-8", b"\xff\xfe": "utf-16-le", b"\xfe\xff": "utf-16-be"}
 _BARE_UTF16 = {b"<\0": "utf-16-le", b"\0<": "utf-16-be"}

@@ -11,7 +11,7 @@ from collections.abc import Collection
 from dataclasses import dataclass, field
 from xml.parsers import expat
 
-from beamfuncs.hosts.grid import LAST_COLUMN, LAST_ROW, Area, area, cell_name, column_number
+from beamfuncs.hosts.headless.grid import LAST_COLUMN, LAST_ROW, Area, area, cell_name, column_number
 
 WHAT_IF = "dataTable"
 

@@ -8,12 +8,12 @@ from concurrent.futures import BrokenExecutor, ProcessPoolExecutor
 from dataclasses import dataclass, field
 from pathlib import Path
 
-from beamfuncs.hosts.engine import Function
-from beamfuncs.hosts.headless import CellFault, Filling, NotFilled, catalogued, refusing
-from beamfuncs.hosts.package import Package
-from beamfuncs.hosts.splice import CellValue
-from beamfuncs.hosts.stored import Difference
-from beamfuncs.hosts.writing import is_no_input
+from beamfuncs.hosts.headless.engine import Function
+from beamfuncs.hosts.headless.filling import CellFault, Filling, NotFilled, catalogued, refusing
+from beamfuncs.hosts.headless.package import Package
+from beamfuncs.hosts.headless.splice import CellValue
+from beamfuncs.hosts.headless.stored import Difference
+from beamfuncs.hosts.headless.writing import is_no_input
 from beamfuncs.trust import Trust
 
 ENDINGS = {".xlsx", ".xlsm"}

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from beamfuncs.hosts.engine import Call, Place
+from beamfuncs.hosts.headless.engine import Call, Place
 
 MOST_CALLS = 20
 """Of one cell that makes more different calls, the first are kept."""

@@ -15,10 +15,10 @@ from collections.abc import Callable, Collection, Iterable, Iterator
 from dataclasses import dataclass, field
 
 from beamfuncs.errors import ErrorValue
-from beamfuncs.hosts.engine import CIRCULAR, NOT_READ, Engine
-from beamfuncs.hosts.graph import IN_CIRCLE, Graph, Place
-from beamfuncs.hosts.layout import Cell
-from beamfuncs.hosts.splice import CellValue, written
+from beamfuncs.hosts.headless.engine import CIRCULAR, NOT_READ, Engine
+from beamfuncs.hosts.headless.graph import IN_CIRCLE, Graph, Place
+from beamfuncs.hosts.headless.layout import Cell
+from beamfuncs.hosts.headless.splice import CellValue, written
 from beamfuncs.trust import Trust
 
 CLOSE = 1e-9

@@ -15,9 +15,9 @@ from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass
 
 from beamfuncs.errors import VALUE
-from beamfuncs.hosts.bounds import why_refused
-from beamfuncs.hosts.grid import Area, column_name, sheet_prefix
-from beamfuncs.hosts.names import LONGEST_FORMULA, Names
+from beamfuncs.hosts.headless.bounds import why_refused
+from beamfuncs.hosts.headless.grid import Area, column_name, sheet_prefix
+from beamfuncs.hosts.headless.names import LONGEST_FORMULA, Names
 
 REF, NAME = "#REF!", "#NAME?"
 TOLD = ".at"

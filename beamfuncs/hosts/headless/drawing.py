@@ -13,9 +13,9 @@ from beamfuncs.beam import Beam
 from beamfuncs.cells import Argument, as_text, frozen
 from beamfuncs.errors import BeamError
 from beamfuncs.fields import LEFT, MOMENT, RIGHT, SHEAR
-from beamfuncs.hosts.canvas import INK, LINE_HEIGHT, Box, Canvas, Point, width_of
-from beamfuncs.hosts.peaks import Peak, peaks
-from beamfuncs.hosts.symbols import End, mark_sign, spring_words, thicknesses
+from beamfuncs.hosts.headless.canvas import INK, LINE_HEIGHT, Box, Canvas, Point, width_of
+from beamfuncs.hosts.headless.peaks import Peak, peaks
+from beamfuncs.hosts.headless.symbols import End, mark_sign, spring_words, thicknesses
 from beamfuncs.loads import Couple, Curvature, Distributed, Load, Loads, Rotation, Settlement
 from beamfuncs.loads import Point as PointLoad
 from beamfuncs.notation import beam_text, read_beam, read_combination, read_loads

@@ -12,7 +12,7 @@ from collections.abc import Iterator, Sequence
 from typing import NamedTuple
 from xml.etree import ElementTree
 
-from beamfuncs.hosts.grid import cell_name
+from beamfuncs.hosts.headless.grid import cell_name
 
 LONGEST_FORMULA = 32_000
 """A name that grows longer than this with the names inside it is left as it is."""

@@ -12,23 +12,23 @@ from pathlib import Path
 from typing import NamedTuple, TypeVar
 
 from beamfuncs.errors import VALUE, ErrorValue
-from beamfuncs.hosts.archive import MOST_BYTES
-from beamfuncs.hosts.bounds import why_refused
-from beamfuncs.hosts.calls import Calls
-from beamfuncs.hosts.conditional import CRITERION, guarded
-from beamfuncs.hosts.engine import FITTED, NO_ROOM, Call, Engine, EngineError, Function, Place
-from beamfuncs.hosts.formulas import TOLD, Speller
-from beamfuncs.hosts.freezing import frozen
-from beamfuncs.hosts.grid import Area, cell_name
-from beamfuncs.hosts.layout import MOST_FORMULAS, MOST_IN_ARRAYS, Cell, Layout, SheetError, read
-from beamfuncs.hosts.names import Names, defined_names
-from beamfuncs.hosts.package import NotAWorkbook, Package, Sheet
-from beamfuncs.hosts.plain import packed
-from beamfuncs.hosts.reasons import Reasons, source_of
-from beamfuncs.hosts.splice import CellValue, filled, for_engine, written
-from beamfuncs.hosts.stored import USERS, Comparison, Difference, Filled, Found, shown, stored_value
-from beamfuncs.hosts.view import View, find
-from beamfuncs.hosts.writing import NotWritten
+from beamfuncs.hosts.headless.archive import MOST_BYTES
+from beamfuncs.hosts.headless.bounds import why_refused
+from beamfuncs.hosts.headless.calls import Calls
+from beamfuncs.hosts.headless.conditional import CRITERION, guarded
+from beamfuncs.hosts.headless.engine import FITTED, NO_ROOM, Call, Engine, EngineError, Function, Place
+from beamfuncs.hosts.headless.formulas import TOLD, Speller
+from beamfuncs.hosts.headless.freezing import frozen
+from beamfuncs.hosts.headless.grid import Area, cell_name
+from beamfuncs.hosts.headless.layout import MOST_FORMULAS, MOST_IN_ARRAYS, Cell, Layout, SheetError, read
+from beamfuncs.hosts.headless.names import Names, defined_names
+from beamfuncs.hosts.headless.package import NotAWorkbook, Package, Sheet
+from beamfuncs.hosts.headless.plain import packed
+from beamfuncs.hosts.headless.reasons import Reasons, source_of
+from beamfuncs.hosts.headless.splice import CellValue, filled, for_engine, written
+from beamfuncs.hosts.headless.stored import USERS, Comparison, Difference, Filled, Found, shown, stored_value
+from beamfuncs.hosts.headless.view import View, find
+from beamfuncs.hosts.headless.writing import NotWritten
 from beamfuncs.trust import Trust
 
 T = TypeVar("T")
@@ -128,7 +128,7 @@ def fill(
         )
         cells = filling.listed(report.errors) if listing is not None or freeze else []
         if listing is not None:
-            from beamfuncs.hosts import reporting
+            from beamfuncs.hosts.headless import reporting
 
             reporting.write(listing, reporting.Listing(source, report, cells, functions), progress)
         filled_parts = filling.parts()
@@ -172,7 +172,7 @@ def _check(source: Path, target: Path) -> None:
 
 
 def _checked_listing(listing: Path, source: Path, target: Path) -> Path:
-    from beamfuncs.hosts.reporting import FORMS
+    from beamfuncs.hosts.headless.reporting import FORMS
 
     if listing.suffix.lower() not in FORMS:
         raise NotFilled(f"{listing}: a report must end in {', '.join(FORMS)}")

@@ -12,12 +12,12 @@ from pathlib import Path
 from typing import TYPE_CHECKING, TypeAlias
 
 from beamfuncs.errors import ErrorValue
-from beamfuncs.hosts import writing
-from beamfuncs.hosts.engine import Function
-from beamfuncs.hosts.understanding import Reader, Understood
+from beamfuncs.hosts.headless import writing
+from beamfuncs.hosts.headless.engine import Function
+from beamfuncs.hosts.headless.understanding import Reader, Understood
 
 if TYPE_CHECKING:
-    from beamfuncs.hosts.headless import ListedCell, Report
+    from beamfuncs.hosts.headless.filling import ListedCell, Report
 
 Progress: TypeAlias = Callable[[int, int], None]
 
@@ -162,7 +162,7 @@ def _json(listing: Listing, progress: Progress) -> str:
 
 
 def _html(listing: Listing, progress: Progress) -> str:
-    from beamfuncs.hosts.page import page
+    from beamfuncs.hosts.headless.page import page
 
     return page(listing, date.today(), progress)
 

@@ -16,7 +16,7 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass, field
 
-from beamfuncs.hosts.grid import column_number
+from beamfuncs.hosts.headless.grid import column_number
 
 CRITERION = "criterion"
 """A function of the engine alone: one criterion handed through, several refused."""

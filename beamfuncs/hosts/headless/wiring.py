@@ -11,7 +11,7 @@ from collections.abc import Mapping
 from html import escape, unescape
 from typing import NamedTuple
 
-from beamfuncs.hosts.package import CONTENT_TYPES, NotAWorkbook
+from beamfuncs.hosts.headless.package import CONTENT_TYPES, NotAWorkbook
 
 RELATIONSHIPS = "http://schemas.openxmlformats.org/package/2006/relationships"
 DECLARATION = '<?xml version="1.0" encoding="UTF-8" standalone="yes"?>\n'

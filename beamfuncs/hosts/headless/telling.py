@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 from beamfuncs.errors import ErrorValue
-from beamfuncs.hosts.checking import Checked, StaleCell
-from beamfuncs.hosts.splice import CellValue, written
-from beamfuncs.hosts.stored import Difference
+from beamfuncs.hosts.headless.checking import Checked, StaleCell
+from beamfuncs.hosts.headless.splice import CellValue, written
+from beamfuncs.hosts.headless.stored import Difference
 
 LONGEST_TEXT = 60
 

@@ -8,10 +8,10 @@ from itertools import chain
 from pathlib import Path
 from typing import Any, NamedTuple
 
-from beamfuncs.hosts.grid import LAST_COLUMN, LAST_ROW, Area, area, column_name
-from beamfuncs.hosts.markup import tree
-from beamfuncs.hosts.package import Package
-from beamfuncs.hosts.plain import packed
+from beamfuncs.hosts.headless.grid import LAST_COLUMN, LAST_ROW, Area, area, column_name
+from beamfuncs.hosts.headless.markup import tree
+from beamfuncs.hosts.headless.package import Package
+from beamfuncs.hosts.headless.plain import packed
 
 DIGITS = 6
 

@@ -8,15 +8,15 @@ from datetime import date
 from typing import TYPE_CHECKING
 
 from beamfuncs.errors import BeamError, ErrorValue
-from beamfuncs.hosts.canvas import escaped
-from beamfuncs.hosts.drawing import drawing
-from beamfuncs.hosts.reporting import error, in_words, reason, single
-from beamfuncs.hosts.telling import difference
-from beamfuncs.hosts.understanding import Arguments, Reader, Understood
+from beamfuncs.hosts.headless.canvas import escaped
+from beamfuncs.hosts.headless.drawing import drawing
+from beamfuncs.hosts.headless.reporting import error, in_words, reason, single
+from beamfuncs.hosts.headless.telling import difference
+from beamfuncs.hosts.headless.understanding import Arguments, Reader, Understood
 
 if TYPE_CHECKING:
-    from beamfuncs.hosts.headless import ListedCell
-    from beamfuncs.hosts.reporting import Listing
+    from beamfuncs.hosts.headless.filling import ListedCell
+    from beamfuncs.hosts.headless.reporting import Listing
 
 
 MOST_DRAWINGS = 500

@@ -10,7 +10,7 @@ from typing import Any
 from beamfuncs.cells import Argument
 from beamfuncs.errors import BeamError
 from beamfuncs.functions import beam_reads, loads_read
-from beamfuncs.hosts.engine import Call, Function
+from beamfuncs.hosts.headless.engine import Call, Function
 
 SOLVING = {"beam", "loads", "stiffness", "combination"}
 """The arguments of a function that solves a beam."""

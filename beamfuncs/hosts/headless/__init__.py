@@ -1,0 +1,1 @@
+"""The headless host: workbooks computed with no spreadsheet program. Start at `filling`."""
