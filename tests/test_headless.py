@@ -515,7 +515,10 @@ def test_a_spilling_array_that_is_blocked_is_an_error(tmp_path: Path) -> None:
     got, report = filled(spilling(tmp_path / "book.xlsx", "A1", "grid(2,1)", rest))
     assert got == {"A1": "#VALUE!", "A2": 9, "C1": "#VALUE!"}
     assert reasons(report) == {
-        "Plan!A1": ("#VALUE!", "the array that the formula gives needs cells that are not empty"),
+        "Plan!A1": (
+            "#VALUE!",
+            "the array that the formula gives needs cells that are not empty, or has more than 10,000 cells",
+        ),
         "Plan!C1": ("#VALUE!", "takes #SPILL! from Plan!A1"),
     }
 

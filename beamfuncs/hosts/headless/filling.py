@@ -21,6 +21,7 @@ from beamfuncs.hosts.headless.formulas import TOLD, Speller
 from beamfuncs.hosts.headless.freezing import frozen
 from beamfuncs.hosts.headless.grid import Area, cell_name
 from beamfuncs.hosts.headless.layout import MOST_FORMULAS, MOST_IN_ARRAYS, Cell, Layout, SheetError, read
+from beamfuncs.hosts.headless.markup import decoded
 from beamfuncs.hosts.headless.names import Names, defined_names
 from beamfuncs.hosts.headless.package import NotAWorkbook, Package, Sheet
 from beamfuncs.hosts.headless.plain import packed
@@ -310,7 +311,7 @@ class Filling:
                 yield place, VALUE
                 continue
             told = f"{number},ROW(),COLUMN()" if cell.shared else f"{number},{row},{column}"
-            text, calls = speller.respell(cell.formula or "", told, row, column)
+            text, calls = speller.respell(decoded(cell.formula or ""), told, row, column)
             if calls and cell.shared:
                 sharing_calls.add((number, cell.shared))
             if calls or (number, cell.shared) in sharing_calls:

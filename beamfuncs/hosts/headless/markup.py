@@ -17,6 +17,7 @@ _SINGLE_BYTES = {"us-ascii": "ascii", "iso-8859-1": "iso-8859-1", "windows-1252"
 _DECLARED = re.compile(r"""(<\?xml\s[^>]*?\bencoding\s*=\s*["'])([\w.-]+)""")
 _PROLOG = re.compile(rb"(?:\s|<\?.*?\?>|<!--.*?-->)*", re.DOTALL)
 _LONGEST_DECLARATION = 1000
+_CODED = re.compile("_x([0-9A-Fa-f]{4})_")
 
 
 class Encoding(NamedTuple):
@@ -80,3 +81,12 @@ def _encoding(xml: bytes) -> Encoding:
     if not wide and name in _SINGLE_BYTES:
         return Encoding(mark, _SINGLE_BYTES[name], declared)
     raise NotAWorkbook(f"it is written in {declared}, which cannot be read here")
+
+
+def decoded(text: str) -> str:
+    """Return a text of a workbook with its coded characters, such as `_x000A_`, as they are.
+
+    >>> decoded("a_x0041__x005F_x0041_")
+    'aA_x0041_'
+    """
+    return _CODED.sub(lambda found: chr(int(found[1], 16)), text) if "_x" in text else text

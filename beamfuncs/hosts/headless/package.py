@@ -7,7 +7,6 @@ parts that are read are ever unpacked.
 from __future__ import annotations
 
 import posixpath
-import re
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -18,7 +17,7 @@ from beamfuncs.hosts.headless.archive import MOST_BYTES, Archive
 from beamfuncs.hosts.headless.archive import NotAWorkbook as NotAWorkbook
 from beamfuncs.hosts.headless.formulas import Table
 from beamfuncs.hosts.headless.grid import area
-from beamfuncs.hosts.headless.markup import Encoding, plain, tree, written
+from beamfuncs.hosts.headless.markup import Encoding, decoded, plain, tree, written
 
 OLD_BINARY = b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1"
 ENCRYPTED = "EncryptedPackage".encode("utf-16-le")
@@ -28,7 +27,6 @@ _COMPUTED = {"worksheet", "sharedStrings", "styles"}
 """The kinds of parts that a workbook is evaluated from."""
 _SIGNATURES = "_xmlsignatures/"
 _MARKUP = (".xml", ".rels")
-_CODED = re.compile("_x([0-9A-Fa-f]{4})_")
 
 
 class Parts(Mapping[str, bytes]):
@@ -192,7 +190,7 @@ def _table(element: ElementTree.Element, sheet: str) -> Table:
         name=element.get("displayName") or element.get("name") or "",
         sheet=sheet,
         area=area(element.get("ref", "")),
-        columns=tuple(_decoded(column.get("name", "")) for column in _children(element, "tableColumns")),
+        columns=tuple(decoded(column.get("name", "")) for column in _children(element, "tableColumns")),
         header_rows=int(element.get("headerRowCount", 1)),
         total_rows=int(element.get("totalsRowCount", 0)),
     )
@@ -226,7 +224,3 @@ def _children(element: ElementTree.Element, name: str) -> Iterator[ElementTree.E
 
 def _tag(element: ElementTree.Element) -> str:
     return element.tag.rpartition("}")[2]
-
-
-def _decoded(name: str) -> str:
-    return _CODED.sub(lambda found: chr(int(found[1], 16)), name)

@@ -14,7 +14,7 @@ LARGEST_SEARCHED = 20_000
 _PLAIN = {
     NOT_READ: "the formula cannot be read",
     NOT_KNOWN: "the formula uses what cannot be evaluated here",
-    NO_ROOM: "the array that the formula gives needs cells that are not empty",
+    NO_ROOM: "the array that the formula gives needs cells that are not empty, or has more than 10,000 cells",
     "#NAME?": "the formula uses a function or a name that is not known here",
 }
 

@@ -18,6 +18,7 @@ from beamfuncs.errors import ErrorValue
 from beamfuncs.hosts.headless.engine import CIRCULAR, NOT_READ, Engine
 from beamfuncs.hosts.headless.graph import IN_CIRCLE, Graph, Place
 from beamfuncs.hosts.headless.layout import Cell
+from beamfuncs.hosts.headless.markup import decoded
 from beamfuncs.hosts.headless.splice import CellValue, written
 from beamfuncs.trust import Trust
 
@@ -36,8 +37,7 @@ BEAM, CHANGED, VOLATILE, SUSPECT, LISTED = 2, 4, 8, 16, 32
 """Marks of a cell: it is or builds on a beam cell; on what has changed since the workbook was saved; on a
 volatile function; its stored value is trusted against the engine's; it is listed."""
 
-_NUMBER = re.compile(r"(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?")
-_CODED = re.compile("_x([0-9A-Fa-f]{4})_")
+_NUMBER = re.compile(r"(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d+)?")
 _VOLATILE = re.compile(
     r"\b(?:NOW|TODAY|RAND|RANDBETWEEN|RANDARRAY|INFO|CELL|OFFSET|INDIRECT)\(|\)\s*:|:\s*[A-Z.]+\(", re.IGNORECASE
 )
@@ -78,7 +78,7 @@ def stored_value(cell: Cell) -> CellValue:
     if cell.type == "e":
         return ErrorValue(text)
     if cell.type == "str":
-        return _CODED.sub(lambda found: chr(int(found[1], 16)), text)
+        return decoded(text)
     return None
 
 
