@@ -160,7 +160,10 @@ def freeze(
 @app.command()
 def check(
     books: Annotated[list[Path], typer.Argument(metavar="BOOK.xlsx|FOLDER...", help="Workbooks, or folders of them.")],
-    jobs: Annotated[int, typer.Option("--jobs", metavar="N", min=1, help="So many workbooks at a time.")] = 1,
+    jobs: Annotated[
+        int,
+        typer.Option("--jobs", metavar="N", min=1, help="So many workbooks at a time, up to the number of processors."),
+    ] = 1,
     trust: Trusted = Trust.STORED,
     as_json: Json = False,
 ) -> None:

@@ -11,6 +11,7 @@ from typer.testing import CliRunner
 
 from beamfuncs.cli import app
 from beamfuncs.functions import reaction
+from beamfuncs.hosts.headless import checking
 from beamfuncs.hosts.headless.checking import check, workbooks
 from beamfuncs.hosts.headless.filling import fill
 from beamfuncs.trust import Trust
@@ -187,3 +188,19 @@ def test_fill_tells_of_differences_volatile_ones_apart(tmp_path: Path) -> None:
     assert lines[3].startswith("  Plan!E2  stores 1, computed 4")
     assert lines[3].endswith("; the computed value is taken (Plan!E2 is volatile)")
     assert len(lines) == 4
+
+
+def test_more_jobs_than_processors_are_not_started(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """A large number of jobs cannot fill the memory with processes."""
+    started: list[int] = []
+
+    class Pool(checking.ProcessPoolExecutor):
+        def __init__(self, workers: int) -> None:
+            started.append(workers)
+            super().__init__(workers)
+
+    monkeypatch.setattr(checking, "ProcessPoolExecutor", Pool)
+    monkeypatch.setattr(checking.os, "cpu_count", lambda: 2)
+    books = [build(tmp_path / f"plan{n}.xlsx", {"A1": 1.0}) for n in range(3)]
+    assert len(list(checking.check_all(books, jobs=99_999))) == 3
+    assert started == [2]

@@ -75,11 +75,16 @@ def check(book: Path, trust: Trust = Trust.STORED, functions: Mapping[str, Funct
 
 
 def check_all(books: Iterable[Path], trust: Trust = Trust.STORED, jobs: int = 1) -> Iterator[Checked]:
-    """Check workbooks, `jobs` at a time, and yield what is found in the order of the books."""
-    if jobs == 1:
+    """Check workbooks and yield what is found in the order of the books.
+
+    As many as `jobs` are checked at a time, but no more than there are processors: more would only take memory.
+    """
+    books = list(books)
+    workers = min(jobs, len(books), os.cpu_count() or 1)
+    if workers <= 1:
         yield from (check(book, trust) for book in books)
         return
-    pool = ProcessPoolExecutor(jobs)
+    pool = ProcessPoolExecutor(workers)
     try:
         waiting = [(book, pool.submit(check, book, trust)) for book in books]
         for book, future in waiting:
