@@ -330,7 +330,7 @@ def test_every_error_has_its_reason(tmp_path: Path) -> None:
         "#VALUE!",
         "twice broke off: ValueError: could not convert string to float: 'nonsense'",
     )
-    unknown = ("#NAME?", "the formula uses a function or a name that is not known here")
+    unknown = ("#NAME?", "the formula uses no_such_function, a function that is not known here")
     assert found == {
         "Plan!B1": ("#VALUE!", UNREADABLE.reason),
         "Plan!B2": ("#VALUE!", "takes #VALUE! from Plan!B1"),

@@ -10,7 +10,8 @@ from books import FIRST_SHEET, build, from_xml, parts, rewrite, store, values
 from openpyxl.worksheet.formula import ArrayFormula
 
 from beamfuncs.errors import ErrorValue
-from beamfuncs.hosts.headless.filling import CellFault, Report, fill
+from beamfuncs.hosts.headless import filling
+from beamfuncs.hosts.headless.filling import CellFault, NotFilled, Report, fill
 from beamfuncs.hosts.headless.stored import Difference, agree
 from beamfuncs.trust import Trust
 
@@ -345,3 +346,49 @@ def test_many_rows_of_running_totals_are_walked_once(tmp_path: Path) -> None:
     got, report = filled(path)
     assert got[f"E{rows}"] == 2 * rows
     assert told(report) == {"Plan!A1": (True, False, True, False)}
+
+
+@pytest.mark.parametrize("text", ["nan", "inf", "-inf", "1_2", "0x10"])
+def test_what_is_no_number_of_the_file_format_is_not_taken_for_one(tmp_path: Path, text: str) -> None:
+    """A stored text that only a programming language takes for a number counts as missing."""
+    rows = f'<row r="1"><c r="A1"><v>4</v></c><c r="B1"><f>A1*2</f><v>{text}</v></c></row>'
+    found, report = filled(from_xml(tmp_path / "plan.xlsx", rows))
+    assert found["B1"] == 8
+    assert report.errors == []
+
+
+def test_a_formula_that_shares_one_that_stands_below_it_is_a_beam_cell(tmp_path: Path) -> None:
+    """The order of the cells in the file does not decide what calls a beam function."""
+    rows = (
+        '<row r="1"><c r="A1"><v>3</v></c><c r="B1"><f t="shared" si="0"/><v>1</v></c></row>'
+        '<row r="2"><c r="A2"><v>4</v></c><c r="B2"><f t="shared" ref="B1:B2" si="0">twice(A2)</f><v>1</v></c></row>'
+    )
+    found, report = filled(from_xml(tmp_path / "plan.xlsx", rows))
+    assert (found["B1"], found["B2"], report.beam_cells) == (6, 8, 2)
+
+
+@pytest.mark.parametrize("sheet", ["9", "-1", "x"])
+def test_a_name_of_a_sheet_that_is_not_there_is_damage(tmp_path: Path, sheet: str) -> None:
+    """It is said in one line, and nothing is done."""
+    path = build(tmp_path / "plan.xlsx", {"A1": 1.0}, {"Load": "$A$1"})
+    rewrite(
+        path, "xl/workbook.xml", lambda xml: xml.replace(b'name="Load"', f'name="Load" localSheetId="{sheet}"'.encode())
+    )
+    with pytest.raises(NotFilled, match="damaged"):
+        fill(path)
+
+
+def test_circles_are_errors_also_where_the_workbook_lets_them_iterate(tmp_path: Path) -> None:
+    """A workbook that goes round its circles elsewhere has no number here that depends on the number of rounds."""
+    path = build(tmp_path / "plan.xlsx", {"A1": "=twice(B1)", "B1": "=1+A1/100"})
+    rewrite(path, "xl/workbook.xml", lambda xml: xml.replace(b"<calcPr ", b'<calcPr iterate="1" iterateCount="3" '))
+    _, report = filled(path)
+    assert {one.cell for one in report.errors} == {"A1", "B1"}
+    assert all("circular" in one.reason for one in report.errors)
+
+
+def test_a_fault_of_this_program_is_one_line(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """What nobody foresaw is no traceback, and does not end the check of a folder."""
+    monkeypatch.setattr(filling, "Filling", lambda *_, **__: 1 / 0)
+    with pytest.raises(NotFilled, match="ZeroDivisionError"):
+        fill(build(tmp_path / "plan.xlsx", {"A1": 1.0}))

@@ -10,14 +10,14 @@ from __future__ import annotations
 import inspect
 import math
 from collections import defaultdict
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from typing import NamedTuple, TypeAlias
 
 import formualizer as fz
 
 from beamfuncs.errors import NA, NUM, VALUE, BeamError, ErrorValue
 from beamfuncs.hosts.headless.conditional import CRITERION, UNLIKE
-from beamfuncs.hosts.headless.formulas import ELSEWHERE, REF, TOLD
+from beamfuncs.hosts.headless.formulas import ELSEWHERE, NAME, REF, TOLD, UNKNOWN
 from beamfuncs.hosts.headless.grid import Area, area, cell_name, sheet_prefix
 from beamfuncs.hosts.headless.splice import CellValue
 
@@ -98,9 +98,12 @@ class Engine:
         self._numbers = {sheet: number for number, sheet in enumerate(sheets)}
         self._called = called
         self._stopped: BaseException | None = None
+        self.unevaluated: set[Place] = set()
+        """The cells that asked for what cannot be evaluated here, whatever they made of the answer."""
         self.failures: defaultdict[Place, list[Failure]] = defaultdict(list)
         self._book.register_function(FITTED + TOLD, _fitted)
         self._book.register_function(ELSEWHERE + TOLD, self._answering(ELSEWHERE, _elsewhere))
+        self._book.register_function(UNKNOWN + TOLD, self._answering(UNKNOWN, _unknown))
         self._book.register_function(UNLIKE + TOLD, self._answering(UNLIKE, _unlike))
         self._book.register_function(CRITERION + TOLD, self._answering(CRITERION, _criterion))
         for name, function in functions.items():
@@ -220,6 +223,8 @@ class Engine:
 
         def answer(sheet: float, row: float, column: float, *arguments: object) -> object:
             place = int(sheet), int(row), int(column)
+            if name in (ELSEWHERE, UNKNOWN):
+                self.unevaluated.add(place)
             try:
                 given = tuple(map(_argument, arguments))
                 self._called(place, Call(name, given))
@@ -302,11 +307,36 @@ def _criterion(value: object) -> object:
         raise BeamError(VALUE, "several criteria at once are not evaluated here: give each a formula of its own")
     if isinstance(value, ErrorValue):
         raise BeamError(str(value), f"the criterion is the error value {value} itself; mend that cell")
+    if isinstance(value, str) and value.lstrip("=<>").upper() in _KINDS:
+        raise BeamError(VALUE, f"cells that hold {value} are not counted here: count them by ISERROR, each in a cell")
     return 0.0 if value is None else value
 
 
 def _unlike() -> object:
     raise BeamError(VALUE, "the ranges of a conditional sum or count are of unlike size")
+
+
+def unknown_functions(names: Iterable[str]) -> set[str]:
+    """Return those of the names that are no function of the engine."""
+    book = fz.Workbook()
+    book.add_sheet("Asked")
+    unknown = set()
+    for name in names:
+        values = []
+        for column, spelt in enumerate((name, f"_xlfn.{name}"), 1):
+            try:
+                book.set_formula("Asked", 1, column, f"={spelt}()")
+                book.evaluate_all()
+                values.append(_from_engine(book.get_value("Asked", 1, column)))
+            except (fz.ExcelEvaluationError, ValueError, RuntimeError):
+                values.append(None)
+        if all(value == NAME for value in values):
+            unknown.add(name)
+    return unknown
+
+
+def _unknown(name: object, *_: object) -> object:
+    raise BeamError(NAME, f"the formula uses {name}, a function that is not known here")
 
 
 def _elsewhere() -> object:

@@ -16,11 +16,21 @@ from beamfuncs.hosts.headless.archive import MOST_BYTES
 from beamfuncs.hosts.headless.bounds import why_refused
 from beamfuncs.hosts.headless.calls import Calls
 from beamfuncs.hosts.headless.conditional import CRITERION, guarded
-from beamfuncs.hosts.headless.engine import FITTED, NO_ROOM, Call, Engine, EngineError, Function, Place
-from beamfuncs.hosts.headless.formulas import TOLD, Speller
+from beamfuncs.hosts.headless.engine import (
+    FITTED,
+    NO_ROOM,
+    Call,
+    Engine,
+    EngineError,
+    Function,
+    Place,
+    unknown_functions,
+)
+from beamfuncs.hosts.headless.formulas import TOLD, Speller, called
 from beamfuncs.hosts.headless.freezing import frozen
 from beamfuncs.hosts.headless.grid import Area, cell_name
 from beamfuncs.hosts.headless.layout import MOST_FORMULAS, MOST_IN_ARRAYS, Cell, Layout, SheetError, read
+from beamfuncs.hosts.headless.lifting import why_not_lifted
 from beamfuncs.hosts.headless.markup import decoded
 from beamfuncs.hosts.headless.names import Names, defined_names
 from beamfuncs.hosts.headless.package import NotAWorkbook, Package, Sheet
@@ -38,6 +48,7 @@ LONGEST_TEXT = 32_767
 """The most characters that a cell holds."""
 
 _DEFINED_NAME = re.compile(rb"(<(?:[\w.-]+:)?definedName\b[^>]*>)([^<]*)(?=</)")
+_ITERATES = re.compile(rb"""(<(?:[\w.-]+:)?calcPr\b[^>]*?)\s+iterate\s*=\s*["'](?:1|true)["']""")
 _CALCULATED_ON_LOAD = re.compile(rb"""<(?:[\w.-]+:)?calcPr\b[^>]*\bfullCalcOnLoad\s*=\s*["'](?:1|true)["']""")
 _TOO_LONG = f"the text is longer than the {LONGEST_TEXT} characters that a cell holds"
 _WHAT_IF = "a what-if table is not evaluated here: its stored values are kept"
@@ -161,6 +172,12 @@ def refusing(source: Path) -> Iterator[None]:
         raise NotFilled(str(error)) from error
     except (NotAWorkbook, EngineError) as error:
         raise NotFilled(f"{source}: {error}") from error
+    except NotFilled:
+        raise
+    except Exception as error:
+        # One workbook that nobody foresaw must not end the check of a folder of others.
+        fault = f"{type(error).__name__}: {error}"
+        raise NotFilled(f"{source}: a fault of this program, which is worth a report ({fault})") from error
 
 
 def _check(source: Path, target: Path) -> None:
@@ -240,6 +257,7 @@ class Filling:
         except EngineError:
             self._refuse_what_breaks_off()
             self.engine.evaluate()
+        self._refuse_what_is_hidden()
         self._keep_to_one_cell()
         self._keep_arrays_within_bounds()
         self.comparison = Comparison(
@@ -284,13 +302,15 @@ class Filling:
     def _book_for_engine(self) -> bytes:
         sheets = [sheet.name for sheet in self.package.sheets]
         meanings = Names(list(defined_names(self.package.parts[self.package.workbook_part])))
-        speller = Speller(self._functions, self.package.tables, meanings, sheets)
+        unknown = self._unknown_functions()
+        speller = Speller(self._functions, self.package.tables, meanings, sheets, unknown)
         spelt = _by_sheet(self._spelt(speller), len(self._layouts))
         parts = {
             sheet.part: for_engine(sheet.xml, layout, spellings)
             for sheet, layout, spellings in zip(self.package.sheets, self._layouts, spelt, strict=True)
         }
-        names = self.package.parts[self.package.workbook_part]
+        # Circles are errors here, also where the program that saved the workbook would go round them.
+        names = _ITERATES.sub(rb"\1", self.package.parts[self.package.workbook_part])
         parts[self.package.workbook_part] = _DEFINED_NAME.sub(
             lambda found: found[1] + _respelt_name(found[2], speller), names
         )
@@ -300,20 +320,21 @@ class Filling:
         """Yield every formula as the engine is to evaluate it, and note which call ours."""
         sharing_calls: set[tuple[int, str]] = set()
         sharing_refused: dict[tuple[int, str], str] = {}
+        for (number, *_), cell in self._cells.items():
+            if cell.shared and cell.formula:
+                sharing_refused[number, cell.shared] = _why_refused(cell)
+                if speller.respell(decoded(cell.formula), "0,0,0", cell.row, cell.column)[1]:
+                    sharing_calls.add((number, cell.shared))
         length = 0
         for place, cell in self._cells.items():
             number, row, column = place
-            why = why_refused(cell.formula or "") or sharing_refused.get((number, cell.shared), "")
+            why = sharing_refused.get((number, cell.shared), "") if cell.shared else _why_refused(cell)
             if why:
                 self._refused[place] = why
-                if cell.shared:
-                    sharing_refused[number, cell.shared] = why
                 yield place, VALUE
                 continue
             told = f"{number},ROW(),COLUMN()" if cell.shared else f"{number},{row},{column}"
             text, calls = speller.respell(decoded(cell.formula or ""), told, row, column)
-            if calls and cell.shared:
-                sharing_calls.add((number, cell.shared))
             if calls or (number, cell.shared) in sharing_calls:
                 self.beam_cells.add(place)
             text = guarded(text, f"{CRITERION}{TOLD}({told},")
@@ -323,6 +344,25 @@ class Filling:
             if length > MOST_BYTES:
                 raise NotAWorkbook(f"it is too large: its formulas and names exceed {MOST_BYTES >> 20} MB")
             yield place, text
+
+    def _unknown_functions(self) -> set[str]:
+        """Return the functions that the workbook calls and neither the engine nor we know."""
+        texts = {cell.formula for cell in self._cells.values() if cell.formula}
+        names = self.package.parts[self.package.workbook_part].decode(errors="replace")
+        named = set().union(called(names), *map(called, texts)) - {name.casefold() for name in self._functions}
+        return unknown_functions(sorted(name for name in named - {"single"} if not name.startswith("_xlpm.")))
+
+    def _refuse_what_is_hidden(self) -> None:
+        """Refuse cells that turn what cannot be evaluated here into a number, as IFERROR(Unknown(A1),0) would."""
+        while hidden := [
+            place
+            for place in self.engine.unevaluated - set(self._refused)
+            if place in self._cells and not isinstance(self.engine.value(place), ErrorValue)
+        ]:
+            for place in hidden:
+                self._refused[place] = self.engine.failures[place][-1].reason
+                self.engine.refuse(place)
+            self._evaluate_again()
 
     def _refuse_what_breaks_off(self) -> None:
         """Refuse the few formulas at which the engine gives up on all others too."""
@@ -516,6 +556,12 @@ def _by_sheet(items: Iterable[tuple[Place, T]], count: int) -> list[dict[tuple[i
     for (number, row, column), item in items:
         sheets[number][row, column] = item
     return sheets
+
+
+def _why_refused(cell: Cell) -> str:
+    """Return why a formula is not handed to the engine, a blank text if it is."""
+    formula = decoded(cell.formula or "")
+    return why_refused(formula) or why_not_lifted(formula, cell.extent is not None)
 
 
 def _respelt_name(text: bytes, speller: Speller) -> bytes:

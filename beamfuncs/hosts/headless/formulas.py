@@ -26,6 +26,9 @@ TOLD = ".at"
 ELSEWHERE = "elsewhere"
 """A function of the engine alone: what another workbook holds, which is an error."""
 
+UNKNOWN = "unknown"
+"""A function of the engine alone: one that it does not know, which is an error."""
+
 MOST_NAMES, DEEPEST_NAMES = 1_000, 50
 """So many names, and so deep in one another, are replaced in one formula; what is left is the engine's to judge."""
 
@@ -81,13 +84,15 @@ class Speller:
         tables: Collection[Table],
         names: Names | None = None,
         sheets: Sequence[str] = (),
+        unknown: Collection[str] = (),
     ) -> None:
+        self._unknown = set(unknown)
         self._functions = {name.casefold() for name in functions}
         self._names = names or Names()
         self._sheets = sheets
         self._meanings = 0
         self._tables: Mapping[str, Table] = {table.name.casefold(): table for table in tables}
-        calls = "|".join(map(re.escape, [*self._functions, "SINGLE"]))
+        calls = "|".join(map(re.escape, [*self._functions, *self._unknown, "SINGLE"]))
         meant = "".join(rf"|\b{re.escape(name)}\b" for name in self._names.unknown)
         meant += "".join(rf"|!{re.escape(name)}\b" for name in self._names.all)
         several_sheets, rows = r":(?:[^:!'()]|'')+'?!", r"\d:\$?\d"
@@ -111,6 +116,8 @@ class Speller:
                 name = found["call"].casefold()
                 if name == "single":
                     return "@("
+                if name in self._unknown:
+                    return f'{UNKNOWN}{TOLD}({place},"{found["call"]}"' + (")" if found["bare"] else ",")
                 if name not in self._functions:
                     return found[0]
                 calls = True
@@ -206,3 +213,15 @@ def _rows(table: Table, marks: set[str]) -> list[range]:
 
 def _unescaped(item: str) -> str:
     return re.sub(r"'(.)", r"\1", item, flags=re.DOTALL)
+
+
+_CALLED = re.compile(r"(?<![\w.])(?:_xlfn\.|_xludf\.)*([^\W\d][\w.]*)\(")
+
+
+def called(formula: str) -> set[str]:
+    """Return the names of all functions that a formula may call, in small letters.
+
+    >>> sorted(called("SUM(A1,_xlfn.XLOOKUP(B1,C:C,D:D))"))
+    ['sum', 'xlookup']
+    """
+    return {name.casefold() for name in _CALLED.findall(formula)}

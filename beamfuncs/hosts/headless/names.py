@@ -12,6 +12,7 @@ from collections.abc import Iterator, Sequence
 from typing import NamedTuple
 from xml.etree import ElementTree
 
+from beamfuncs.hosts.headless.archive import NotAWorkbook
 from beamfuncs.hosts.headless.grid import cell_name
 
 LONGEST_FORMULA = 32_000
@@ -80,4 +81,6 @@ def defined_names(workbook: bytes) -> Iterator[Name]:
         if not text or name.startswith(_BUILT_IN) or element.get("function"):
             continue
         sheet = element.get("localSheetId")
+        if sheet is not None and not (sheet.isdecimal() and int(sheet) < len(sheets)):
+            raise NotAWorkbook(f"it is damaged (the name {name} belongs to sheet {sheet}, which is not there)")
         yield Name(name, None if sheet is None else sheets[int(sheet)], text)

@@ -14,6 +14,7 @@ from collections import defaultdict
 from collections.abc import Callable, Collection, Iterable, Iterator
 from dataclasses import dataclass, field
 
+from beamfuncs.cells import is_number
 from beamfuncs.errors import ErrorValue
 from beamfuncs.hosts.headless.engine import CIRCULAR, NOT_READ, Engine
 from beamfuncs.hosts.headless.graph import IN_CIRCLE, Graph, Place
@@ -69,10 +70,7 @@ def stored_value(cell: Cell) -> CellValue:
         return None
     text = cell.value
     if cell.type in ("", "n"):
-        try:
-            return float(text)
-        except ValueError:
-            return None
+        return float(text) if is_number(text.strip()) and math.isfinite(float(text)) else None
     if cell.type == "b":
         return text.strip() in ("1", "true")
     if cell.type == "e":
