@@ -330,15 +330,14 @@ def test_every_error_has_its_reason(tmp_path: Path) -> None:
         "#VALUE!",
         "twice broke off: ValueError: could not convert string to float: 'nonsense'",
     )
-    unknown = ("#NAME?", "the formula uses no_such_function, a function that is not known here")
     assert found == {
         "Plan!B1": ("#VALUE!", UNREADABLE.reason),
         "Plan!B2": ("#VALUE!", "takes #VALUE! from Plan!B1"),
         "Plan!B3": ("#VALUE!", "takes #VALUE! from Plan!B1"),
         "Plan!B4": ("#DIV/0!", "the formula gives #DIV/0!"),
         "Plan!B5": ("#REF!", "takes #REF! from Data!A1"),
-        "Plan!B6": unknown,
-        "Plan!B7": unknown,
+        "Plan!B6": ("#NAME?", "the formula uses no_such_function, a function that is not known here"),
+        "Plan!B7": ("#NAME?", "the formula uses a function or a name that is not known here"),
         "Plan!B8": ("#VALUE!", "circular reference: Plan!B8 -> Plan!B9 -> Plan!B8"),
         "Plan!B9": ("#VALUE!", "circular reference: Plan!B9 -> Plan!B8 -> Plan!B9"),
         "Plan!B11": ("#DIV/0!", "the formula gives #DIV/0!"),
