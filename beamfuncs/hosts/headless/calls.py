@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from beamfuncs.hosts.headless.engine import Call, Place
+from beamfuncs.hosts.headless.engine import Call
+from beamfuncs.hosts.headless.grid import Place
 
 MOST_CALLS = 20
 """Of one cell that makes more different calls, the first are kept."""

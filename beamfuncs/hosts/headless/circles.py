@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Iterator
-from typing import TypeAlias
 
-Place: TypeAlias = "tuple[int, int, int]"
+from beamfuncs.hosts.headless.grid import Place
 
 LARGEST_TRACED = 60
 """In a circle of more cells one chain is found for all of them, and not for each the shortest."""

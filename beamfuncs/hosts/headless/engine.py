@@ -18,12 +18,10 @@ import formualizer as fz
 from beamfuncs.errors import NA, NUM, VALUE, BeamError, ErrorValue
 from beamfuncs.hosts.headless.conditional import CRITERION, UNLIKE
 from beamfuncs.hosts.headless.formulas import ELSEWHERE, NAME, REF, TOLD, UNKNOWN
-from beamfuncs.hosts.headless.grid import Area, area, cell_name, sheet_prefix
+from beamfuncs.hosts.headless.grid import Area, Place, area, cell_name, sheet_prefix
 from beamfuncs.hosts.headless.splice import CellValue
 
 Function: TypeAlias = Callable[..., object]
-Place: TypeAlias = "tuple[int, int, int]"
-"""The number of a sheet, the row and the column of a cell."""
 
 CIRCULAR = ErrorValue("#CIRC!")
 NOT_READ = ErrorValue("#ERROR!")

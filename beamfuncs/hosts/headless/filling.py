@@ -23,12 +23,11 @@ from beamfuncs.hosts.headless.engine import (
     Engine,
     EngineError,
     Function,
-    Place,
     unknown_functions,
 )
 from beamfuncs.hosts.headless.formulas import TOLD, Speller, called
 from beamfuncs.hosts.headless.freezing import frozen
-from beamfuncs.hosts.headless.grid import Area, cell_name
+from beamfuncs.hosts.headless.grid import Area, Place, cell_name
 from beamfuncs.hosts.headless.layout import MOST_FORMULAS, MOST_IN_ARRAYS, Cell, Layout, SheetError, read
 from beamfuncs.hosts.headless.lifting import why_not_lifted
 from beamfuncs.hosts.headless.markup import decoded
@@ -131,7 +130,7 @@ def fill(
             _check(source, target)
         functions = catalogued() if functions is None else functions
         if listing is not None:
-            listing = _checked_listing(Path(listing), source, target)
+            listing = _checked_listing(Path(listing))
         filling = Filling(Package.read(source), functions, None if listing is None else Calls())
         filling.evaluate(progress)
         filling.settle(trust)
@@ -189,7 +188,7 @@ def _check(source: Path, target: Path) -> None:
         raise NotFilled(f"{target.parent}: there is no such folder to write to")
 
 
-def _checked_listing(listing: Path, source: Path, target: Path) -> Path:
+def _checked_listing(listing: Path) -> Path:
     from beamfuncs.hosts.headless.reporting import FORMS
 
     if listing.suffix.lower() not in FORMS:
@@ -505,7 +504,7 @@ class Filling:
 
     def _fault(self, place: Place, value: str, why: str, formula: str) -> CellFault:
         number, row, column = place
-        return CellFault(self.package.sheets[number].name, cell_name(row, column), str(value), why, formula)
+        return CellFault(self.package.sheets[number].name, cell_name(row, column), value, why, formula)
 
     @cached_property
     def _shared(self) -> dict[tuple[int, str], Cell]:

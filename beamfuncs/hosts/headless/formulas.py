@@ -17,7 +17,7 @@ from dataclasses import dataclass
 from beamfuncs.errors import VALUE
 from beamfuncs.hosts.headless.bounds import why_refused
 from beamfuncs.hosts.headless.grid import Area, column_name, sheet_prefix
-from beamfuncs.hosts.headless.names import LONGEST_FORMULA, Names
+from beamfuncs.hosts.headless.names import LONGEST_MEANING, Names
 
 REF, NAME = "#REF!", "#NAME?"
 TOLD = ".at"
@@ -153,7 +153,7 @@ class Speller:
         if mark in inside:
             return NAME, False
         text, calls = self.respell(formula, place, row, column, inside + mark)
-        return ("", False) if len(text) > LONGEST_FORMULA else (f"({text})", calls)
+        return ("", False) if len(text) > LONGEST_MEANING else (f"({text})", calls)
 
     def _sheet(self, place: str) -> str:
         number = int(place.partition(",")[0])

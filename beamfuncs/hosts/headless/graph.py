@@ -13,10 +13,8 @@ from collections import defaultdict
 from collections.abc import Callable, Collection, Iterable, Iterator, Mapping
 from typing import TypeAlias
 
-from beamfuncs.hosts.headless.grid import Area
+from beamfuncs.hosts.headless.grid import Area, Place
 
-Place: TypeAlias = "tuple[int, int, int]"
-"""The number of a sheet, the row and the column of a cell."""
 Reference: TypeAlias = "tuple[int, Area]"
 """The number of a sheet and an area in it."""
 Inputs: TypeAlias = "Callable[[Place], Iterable[Reference]]"

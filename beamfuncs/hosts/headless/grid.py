@@ -4,12 +4,15 @@ from __future__ import annotations
 
 import re
 from functools import cache
-from typing import NamedTuple
+from typing import NamedTuple, TypeAlias
 
 LAST_ROW, LAST_COLUMN = 1_048_576, 16_384
 """The last row and column that a sheet can have."""
 
 _CELL = re.compile(r"\$?([A-Za-z]{1,3})\$?([1-9][0-9]*)")
+
+Place: TypeAlias = "tuple[int, int, int]"
+"""The number of a sheet, the row and the column of a cell."""
 
 
 class Area(NamedTuple):

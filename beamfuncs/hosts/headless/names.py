@@ -15,7 +15,7 @@ from xml.etree import ElementTree
 from beamfuncs.hosts.headless.archive import NotAWorkbook
 from beamfuncs.hosts.headless.grid import cell_name
 
-LONGEST_FORMULA = 32_000
+LONGEST_MEANING = 32_000
 """A name that grows longer than this with the names inside it is left as it is."""
 
 _PLAIN = re.compile(

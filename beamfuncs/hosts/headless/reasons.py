@@ -6,7 +6,8 @@ from collections.abc import Iterator
 
 from beamfuncs.errors import NA, ErrorValue
 from beamfuncs.hosts.headless.circles import Circles
-from beamfuncs.hosts.headless.engine import CIRCULAR, NO_ROOM, NOT_KNOWN, NOT_READ, Engine, Failure, Place
+from beamfuncs.hosts.headless.engine import CIRCULAR, NO_ROOM, NOT_KNOWN, NOT_READ, Engine, Failure
+from beamfuncs.hosts.headless.grid import Place
 
 LARGEST_SEARCHED = 20_000
 """In a range of more cells none is looked for that an error comes from."""

@@ -17,7 +17,8 @@ from dataclasses import dataclass, field
 from beamfuncs.cells import is_number
 from beamfuncs.errors import ErrorValue
 from beamfuncs.hosts.headless.engine import CIRCULAR, NOT_READ, Engine
-from beamfuncs.hosts.headless.graph import IN_CIRCLE, Graph, Place
+from beamfuncs.hosts.headless.graph import IN_CIRCLE, Graph
+from beamfuncs.hosts.headless.grid import Place
 from beamfuncs.hosts.headless.layout import Cell
 from beamfuncs.hosts.headless.markup import decoded
 from beamfuncs.hosts.headless.splice import CellValue, written
