@@ -157,6 +157,10 @@ def _element(
         if near < place - breaks[-1] and length - place > near:
             breaks.append(place)
     breaks.append(length)
+    concentrated: dict[float, list[Piece]] = {}
+    for piece in pieces:
+        if piece.start == piece.end:
+            concentrated.setdefault(_nearest(breaks, piece.start), []).append(piece)
     V, M, phi, v = states[:4]
     stretches: list[Stretch] = []
     jumps: list[frozenset[int]] = []
@@ -178,16 +182,21 @@ def _element(
         if inside:
             V, M, phi, v = ends
             jumping = set()
-            for piece in pieces:
-                if piece.start == piece.end and min(breaks, key=lambda place: abs(place - piece.start)) == b:
-                    if piece.kind is Point:
-                        V -= factors[piece.column] * piece.size
-                        jumping.add(SHEAR)
-                    else:
-                        M += factors[piece.column] * piece.size
-                        jumping.add(MOMENT)
+            for piece in concentrated.get(b, ()):
+                if piece.kind is Point:
+                    V -= factors[piece.column] * piece.size
+                    jumping.add(SHEAR)
+                else:
+                    M += factors[piece.column] * piece.size
+                    jumping.add(MOMENT)
             jumps.append(frozenset(jumping))
     return stretches, jumps
+
+
+def _nearest(breaks: list[float], place: float) -> float:
+    """Return the break that is nearest to a place."""
+    index = bisect_left(breaks, place)
+    return min(breaks[max(index - 1, 0) : index + 1], key=lambda b: abs(b - place))
 
 
 def _polynomials(
