@@ -81,7 +81,7 @@ def _options(
 
 @app.command()
 def fill(
-    book: Annotated[Path, typer.Argument(metavar="BOOK.xlsx", help="The workbook; it is only read.")],
+    book: Annotated[Path, typer.Argument(metavar="BOOK.xlsx", help="The workbook; without --in-place it is only read.")],
     out: Annotated[
         Path | None,
         typer.Option("-o", "--out", metavar="OUT.xlsx", help="Default: BOOK.filled.xlsx beside the workbook."),
@@ -109,21 +109,12 @@ def fill(
 
     if in_place and out:
         _give_up("--in-place and --out exclude each other: the workbook is filled itself, or a copy of it")
-    try:
+    with _giving_up(), _progress_bar() as progress:
         view = filling.view_of(book, show) if show else None
-        with _progress_bar() as progress:
-            report = filling.fill(book, out, progress=progress, in_place=in_place, listing=listing, trust=trust)
-    except filling.NotFilled as error:
-        _give_up(str(error))
-    except KeyboardInterrupt:
-        _give_up("interrupted: nothing was written")
-    if as_json:
-        print(json.dumps(asdict(report), indent=2, ensure_ascii=False, default=str))
-    else:
-        if view:
-            _print_view(report.target, view)
-        _summarise(report)
-    raise typer.Exit(DONE_WITH_ERRORS if report.errors else DONE)
+        report = filling.fill(book, out, progress=progress, in_place=in_place, listing=listing, trust=trust)
+    if view and not as_json:
+        _print_view(report.target, view)
+    _finish(report, as_json)
 
 
 @app.command()
@@ -143,18 +134,9 @@ def freeze(
     """
     from beamfuncs.hosts.headless import filling
 
-    try:
-        with _progress_bar() as progress:
-            report = filling.fill(book, out, progress=progress, trust=trust, freeze=True)
-    except filling.NotFilled as error:
-        _give_up(str(error))
-    except KeyboardInterrupt:
-        _give_up("interrupted: nothing was written")
-    if as_json:
-        print(json.dumps(asdict(report), indent=2, ensure_ascii=False, default=str))
-    else:
-        _summarise(report, action="frozen")
-    raise typer.Exit(DONE_WITH_ERRORS if report.errors else DONE)
+    with _giving_up(), _progress_bar() as progress:
+        report = filling.fill(book, out, progress=progress, trust=trust, freeze=True)
+    _finish(report, as_json, action="frozen")
 
 
 @app.command()
@@ -216,6 +198,28 @@ def list_functions(
 def _give_up(reason: str) -> NoReturn:
     print(f"beamfuncs: {' '.join(reason.split())}", file=sys.stderr)
     raise typer.Exit(NOTHING_DONE)
+
+
+@contextmanager
+def _giving_up() -> Iterator[None]:
+    """End with one line and the status for nothing done where a workbook cannot be filled, or at an interruption."""
+    from beamfuncs.hosts.headless.filling import NotFilled
+
+    try:
+        yield
+    except NotFilled as error:
+        _give_up(str(error))
+    except KeyboardInterrupt:
+        _give_up("interrupted: nothing was written")
+
+
+def _finish(report: Report, as_json: bool, action: str = "filled") -> NoReturn:
+    """Print what was done, and end with the status that says whether some cell is in error."""
+    if as_json:
+        print(json.dumps(asdict(report), indent=2, ensure_ascii=False, default=str))
+    else:
+        _summarise(report, action=action)
+    raise typer.Exit(DONE_WITH_ERRORS if report.errors else DONE)
 
 
 def _print_view(book: Path, view: View) -> None:

@@ -52,45 +52,46 @@ class Couple:
     total: ClassVar[float] = 0.0
 
 
+class Imposed:
+    """A deformation that is imposed: it adds no force, and makes forces only in a statically indeterminate beam."""
+
+    imposed: ClassVar[bool] = True
+    total: ClassVar[float] = 0.0
+
+
 @dataclass(frozen=True)
-class Settlement:
+class Settlement(Imposed):
     """A support that sinks by `size` [length]."""
 
     mark: int
     size: float
     case: str | None
-    imposed: ClassVar[bool] = True
-    total: ClassVar[float] = 0.0
 
 
 @dataclass(frozen=True)
-class Rotation:
+class Rotation(Imposed):
     """A support that turns clockwise by `size` [radian]."""
 
     mark: int
     size: float
     case: str | None
-    imposed: ClassVar[bool] = True
-    total: ClassVar[float] = 0.0
 
 
 @dataclass(frozen=True)
-class Curvature:
+class Curvature(Imposed):
     """A free curvature `size` [1/length], sagging positive, imposed from `start` to `end`."""
 
     start: float
     end: float
     size: float
     case: str | None
-    imposed: ClassVar[bool] = True
-    total: ClassVar[float] = 0.0
 
 
 SMALLEST, LARGEST = 1e-60, 1e60
 """Sizes of loads are zero or lie between these, so that no product of them leaves the range of numbers."""
 
 Load: TypeAlias = Distributed | Point | Couple | Settlement | Rotation | Curvature
-"""A load placed on a beam. `imposed` deformations make forces only where the beam is statically indeterminate."""
+"""A load placed on a beam."""
 
 
 @dataclass(frozen=True)
