@@ -81,7 +81,7 @@ def _options(
 
 @app.command()
 def fill(
-    book: Annotated[Path, typer.Argument(metavar="BOOK.xlsx", help="The workbook; without --in-place it is only read.")],
+    book: Annotated[Path, typer.Argument(metavar="BOOK.xlsx", help="The workbook, only read but for --in-place.")],
     out: Annotated[
         Path | None,
         typer.Option("-o", "--out", metavar="OUT.xlsx", help="Default: BOOK.filled.xlsx beside the workbook."),
