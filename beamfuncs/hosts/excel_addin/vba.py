@@ -46,6 +46,17 @@ Public Sub BeamFuncsFailure()
     MsgBox IIf(lastFailure = "", "Python has answered so far.", lastFailure), vbInformation, "{MODULE}"
 End Sub
 
+' Name the add-in by its folder on this machine, in a workbook that names it by the folder of another.
+Public Sub BeamFuncsRelink()
+    Dim link As Variant
+    If IsEmpty(ActiveWorkbook.LinkSources(xlExcelLinks)) Then Exit Sub
+    For Each link In ActiveWorkbook.LinkSources(xlExcelLinks)
+        If LCase$(Mid$(link, InStrRev(link, "\") + 1)) = LCase$(ThisWorkbook.Name) And link <> ThisWorkbook.FullName Then
+            ActiveWorkbook.ChangeLink link, ThisWorkbook.FullName, xlExcelLinks
+        End If
+    Next link
+End Sub
+
 Private Function Answer(ByVal name As String, ByVal arguments As Variant) As Variant
     On Error GoTo Failed
     Answer = WithErrors(XLPy.CallUDF("{SERVED}", name, arguments))

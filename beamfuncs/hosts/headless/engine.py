@@ -337,7 +337,7 @@ def _unknown(name: object, *_: object) -> object:
     raise BeamError(NAME, f"the formula uses {name}, a function that is not known here")
 
 
-def _elsewhere() -> object:
+def _elsewhere(*_: object) -> object:
     raise BeamError(REF, "refers to another workbook, which is not opened here")
 
 

@@ -12,6 +12,7 @@ from pathlib import Path
 from typing import NamedTuple, TypeVar
 
 from beamfuncs.errors import VALUE, ErrorValue
+from beamfuncs.hosts.excel_addin.places import ADDIN
 from beamfuncs.hosts.headless.archive import MOST_BYTES
 from beamfuncs.hosts.headless.bounds import why_refused
 from beamfuncs.hosts.headless.calls import Calls
@@ -302,7 +303,7 @@ class Filling:
         sheets = [sheet.name for sheet in self.package.sheets]
         meanings = Names(list(defined_names(self.package.parts[self.package.workbook_part])))
         unknown = self._unknown_functions()
-        speller = Speller(self._functions, self.package.tables, meanings, sheets, unknown)
+        speller = Speller(self._functions, self.package.tables, meanings, sheets, unknown, self.package.links_to(ADDIN))
         spelt = _by_sheet(self._spelt(speller), len(self._layouts))
         parts = {
             sheet.part: for_engine(sheet.xml, layout, spellings)

@@ -5,7 +5,8 @@ three hidden leading arguments, the number of the sheet, the row and the column 
 (`reaction(A1, B1, 1)` in the third sheet's D2 becomes `reaction.at(3,2,4,A1, B1, 1)`), and
 `Beams[Span]` becomes `'Schedule'!$C$2:$C$20`. So do whole rows (`2:3` becomes `A2:XFD3`), one area through
 several sheets (`SUM(Plan:Roof!B2)`), names that stand for formulas, and references to other workbooks, which are never
-opened (`elsewhere.at(3,2,4)`, an error). The workbook's own formulas are never touched.
+opened (`elsewhere.at(3,2,4)`, an error). A call of ours by way of our add-in for Excel (`[1]!reaction(A1, B1, 1)`) is a
+call of ours. The workbook's own formulas are never touched.
 """
 
 from __future__ import annotations
@@ -40,6 +41,7 @@ _TAKES_SHEETS = "SUM|AVERAGE|AVERAGEA|COUNT|COUNTA|MAX|MAXA|MIN|MINA|PRODUCT"
 _PIECE = re.compile(
     rf"""
       "(?:[^"]|"")*"                                    # a text
+    | (?<![\w\]])\[(?P<link>[0-9]+)\]!(?P<linked>[^\W\d][\w.]*)\(\s*(?P<closed>\))?
     | (?P<elsewhere>{_OTHER_BOOK}!(?:{_AREA}|\#REF!|[^\W\d][\w.\\]*(?:\[[^\]]*\])?))
     | \b(?P<over>(?:{_TAKES_SHEETS})\(\s*)
       (?:'(?P<quoted>(?:[^':\[]|'')+:(?:[^':\[]|'')+)'|(?P<plain>[^\W\d][\w.]*:[^\W\d][\w.]*))!(?P<area>{_AREA})
@@ -85,8 +87,10 @@ class Speller:
         names: Names | None = None,
         sheets: Sequence[str] = (),
         unknown: Collection[str] = (),
+        addins: Collection[int] = (),
     ) -> None:
         self._unknown = set(unknown)
+        self._addins = addins
         self._functions = {name.casefold() for name in functions}
         self._names = names or Names()
         self._sheets = sheets
@@ -110,18 +114,26 @@ class Speller:
             return formula, False
         calls = False
 
+        def told(name: str, told_besides: str, closed: str | None) -> str:
+            return f"{name}{TOLD}({place}{told_besides}" + (")" if closed else ",")
+
         def piece(found: re.Match[str]) -> str:
             nonlocal calls
+            if found["linked"]:
+                name = found["linked"].casefold()
+                ours = int(found["link"]) in self._addins and name in self._functions
+                calls = calls or ours
+                return told(name if ours else ELSEWHERE, "", found["closed"])
             if found["call"]:
                 name = found["call"].casefold()
                 if name == "single":
                     return "@("
                 if name in self._unknown:
-                    return f'{UNKNOWN}{TOLD}({place},"{found["call"]}"' + (")" if found["bare"] else ",")
+                    return told(UNKNOWN, f',"{found["call"]}"', found["bare"])
                 if name not in self._functions:
                     return found[0]
                 calls = True
-                return f"{name}{TOLD}({place})" if found["bare"] else f"{name}{TOLD}({place},"
+                return told(name, "", found["bare"])
             if found["table"]:
                 table = self._tables.get(found["table"].casefold())
                 return found[0] if table is None else plain_reference(table, found["part"], row)

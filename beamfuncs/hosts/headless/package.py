@@ -7,9 +7,11 @@ parts that are read are ever unpacked.
 from __future__ import annotations
 
 import posixpath
+import re
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
+from urllib.parse import unquote
 from xml.etree import ElementTree
 
 from beamfuncs.hosts.headless import writing
@@ -96,6 +98,18 @@ class Package:
         except (ElementTree.ParseError, ValueError) as error:
             raise NotAWorkbook(f"its XML is damaged ({error})") from error
 
+    def links_to(self, file: str) -> set[int]:
+        """Return the numbers, as formulas give them in brackets, of the links to a file of this name in any folder."""
+        links = _children(tree(self.parts[self.workbook_part]), "externalReferences")
+        related = _relations(self.parts, self.workbook_part)
+        found = set()
+        for number, link in enumerate(links, 1):
+            _, part = related.get(_id(link), ("", ""))
+            targets = (target for _, target in _relations(self.parts, part, outside=True).values())
+            if any(_file_name(target) == file.casefold() for target in targets):
+                found.add(number)
+        return found
+
     def computed_from(self) -> dict[str, bytes]:
         """Return the parts that the workbook is evaluated from; all others are left packed."""
         related = [target for kind, target in _relations(self.parts, self.workbook_part).values() if kind in _COMPUTED]
@@ -171,7 +185,7 @@ def _contents(parts: Mapping[str, bytes]) -> tuple[str, tuple[Sheet, ...], tuple
     sheets: list[Sheet] = []
     tables: list[Table] = []
     for element in _children(workbook, "sheets"):
-        kind, part = related[next((value for name, value in element.items() if name.endswith("}id")), "sheet")]
+        kind, part = related[_id(element) or "sheet"]
         if kind != "worksheet":
             continue
         sheet = Sheet(element.get("name", ""), part, parts[part])
@@ -196,19 +210,35 @@ def _table(element: ElementTree.Element, sheet: str) -> Table:
     )
 
 
-def _relations(parts: Mapping[str, bytes], part: str) -> dict[str, tuple[str, str]]:
-    """Return kind and target of each relation of a part, by its id; of the package itself where it is blank."""
+def _relations(parts: Mapping[str, bytes], part: str, outside: bool = False) -> dict[str, tuple[str, str]]:
+    """Return kind and target of each relation of a part, by its id; of the package itself where it is blank.
+
+    Those to other parts of the package, or as they are written, those to files `outside`.
+    """
     folder = posixpath.dirname(part)
     listed = _relations_part(part)
     if listed not in parts:
         return {}
     relations = {}
     for element in tree(parts[listed]):
-        if element.get("TargetMode") != "External":
-            kind = element.get("Type", "").rpartition("/")[2]
+        kind = element.get("Type", "").rpartition("/")[2]
+        if (element.get("TargetMode") == "External") is not outside:
+            continue
+        if outside:
+            relations[element.get("Id", "")] = kind, element.get("Target", "")
+        else:
             target = posixpath.normpath(posixpath.join("/", folder, element.get("Target", "")))
             relations[element.get("Id", "")] = kind, target.lstrip("/")
     return relations
+
+
+def _id(element: ElementTree.Element) -> str:
+    """Return the id by which an element names a relation."""
+    return next((value for name, value in element.items() if name.endswith("}id")), "")
+
+
+def _file_name(target: str) -> str:
+    return re.split(r"[/\\]", unquote(target))[-1].casefold()
 
 
 def _relations_part(part: str) -> str:
