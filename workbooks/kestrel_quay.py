@@ -1,7 +1,8 @@
 """Build the design workbook of the Kestrel Quay boat store: `python kestrel_quay.py [OUT.xlsx]`.
 
 The boat store is invented. The workbook holds inputs and formulas, no values: a host of the
-worksheet functions, or `beamfuncs fill`, computes it.
+worksheet functions, or `beamfuncs fill`, computes it. Beside it stands the same workbook with
+the VBA project of xlwings' template, as .xlsm.
 """
 
 from __future__ import annotations
@@ -11,9 +12,10 @@ from datetime import date
 from pathlib import Path
 
 from openpyxl import Workbook
-from sheets import foundations, in_depth, notes, paper, schedule, understood
+from sheets import foundations, in_depth, macros, notes, paper, schedule, understood
 from sheets.design import Design, LaidOut, Member, Pad
 from sheets.paper import TitleBlock
+from sheets.writing import write
 
 BOOK = Path(__file__).with_suffix(".xlsx")
 
@@ -437,10 +439,14 @@ def build() -> Workbook:
 
 
 def main(arguments: list[str]) -> None:
-    """Build the workbook and save it."""
+    """Build the workbook and save it, without macros and with them."""
     target = Path(arguments[0]) if arguments else BOOK
-    build().save(target)
+    book = build()
+    write(book, target, DESIGN.issue.issued)
+    macros.equip(book, DESIGN)
+    write(book, target.with_suffix(".xlsm"), DESIGN.issue.issued)
     print(target)
+    print(target.with_suffix(".xlsm"))
 
 
 if __name__ == "__main__":
