@@ -144,6 +144,12 @@ class Beam:
         return tuple(pairwise(self.supports))
 
     @cached_property
+    def parts(self) -> tuple[tuple[float, float], ...]:
+        """Where each span and each overhang starts and ends."""
+        ends = sorted({0.0, *(self.x[index] for index in self.supports), self.length})
+        return tuple(pairwise(ends))
+
+    @cached_property
     def restraints(self) -> int:
         """The number of support reactions and reaction moments."""
         return sum((mark.kv > 0.0) + (mark.kr > 0.0) for mark in self.marks)

@@ -17,6 +17,8 @@ RETURNS = {
     "str": "text",
     "float | Rows": "number or array",
     "Rows": "array",
+    "Table": "array",
+    "Texts": "array",
 }
 """The shape of a result, by the function's return annotation."""
 

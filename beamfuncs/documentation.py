@@ -15,6 +15,13 @@ PARAMETERS = {
     " Downward, clockwise and sagging are positive.",
     "stiffness": "EI [force·length²]: one number, one for each length, or text 'EI 24000; GA 5e5'. Blank: not given.",
     "combination": "Factors of the load cases, e.g. '1.35 G + 1.5 Q'. Blank: every load once.",
+    "phrase": "What is asked for, or a range of it: 'reaction 2', 'reaction moment 1', 'moment at 3', 'shear at 4"
+    " left', 'deflection at 1 in span 2', 'moment at support 2', 'moment max in span 2', 'position of moment max',"
+    " 'total load'.",
+    "combinations": "Combination or a range of them: '1.35 G + 1.5 Q', '1.35/1.0 G' (adverse/favourable). Blank: every"
+    " load once.",
+    "points": "Number of evenly spaced places, both ends included; marks and load ends are added to them. Blank or 0:"
+    " 21.",
     "x": "Place from the left end [length], or a range of places.",
     "support": "Number of the support, from 1, left to right; free ends, hinges and steps do not count.",
     "span": "Number of the span between two supports, from 1, left to right. Blank or 0: the whole beam.",
@@ -33,6 +40,11 @@ SOLVED_RAISES = f"""\
 SOLVED_NOTES = """\
 Linear elastic, small deflections, solved exactly by the direct stiffness method (J. S. Przemieniecki, Theory of
 Matrix Structural Analysis, McGraw-Hill 1968). Any consistent units. Verify by independent means."""
+
+FREE_NOTES = """\
+A clause that ends in `each span` acts on each span and overhang by itself, one that ends in `each load` as a whole:
+there where it is adverse, absent elsewhere. `axles` move over the beam; the whole train counts, and may be off the
+beam. With a lane load or several trains, `max` and `min` along the beam are found by a search, not in closed form."""
 
 SECTIONS = ("Parameters", "Returns", "Raises", "Notes", "Examples")
 _HEADING = re.compile(r"^(\w+)\n-{3,}\n", re.MULTILINE)
@@ -75,6 +87,8 @@ def _completed(function: Callable[..., Any]) -> str:
     told = PARAMETERS | parameters(own.get("Parameters", ""))
     names = list(inspect.signature(function).parameters)
     own["Parameters"] = "\n".join(f"{name}\n    {told[name]}" for name in names)
+    if "combinations" in names:
+        own.setdefault("Notes", FREE_NOTES)
     solved = {"beam", "loads", "stiffness"} <= set(names)
     own.setdefault("Raises", SOLVED_RAISES if solved else RAISES)
     if solved:

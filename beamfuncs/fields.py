@@ -11,7 +11,7 @@ from typing import NamedTuple, TypeAlias
 import numpy as np
 
 from beamfuncs.beam import Beam
-from beamfuncs.loads import Couple, Distributed, Point
+from beamfuncs.loads import Couple, Distributed, Kink, Point, Slip
 from beamfuncs.stiffness import Piece, Solution
 
 FIELDS = ("shear", "moment", "slope", "deflection")
@@ -161,7 +161,7 @@ def _element(
     for piece in pieces:
         if piece.start == piece.end:
             concentrated.setdefault(_nearest(breaks, piece.start), []).append(piece)
-    V, M, phi, v = states[:4]
+    state, _ = _across(states[:4], concentrated.get(0.0, ()), factors)
     stretches: list[Stretch] = []
     jumps: list[frozenset[int]] = []
     for a, b in pairwise(breaks):
@@ -174,23 +174,32 @@ def _element(
                     q_end += factors[piece.column] * piece.at(b)
                 else:
                     kappa += factors[piece.column] * piece.size
-        polynomials = _polynomials((V, M, phi, v), q, (q_end - q) / h, kappa, EI, GA)
+        polynomials = _polynomials(state, q, (q_end - q) / h, kappa, EI, GA)
         inside = b < length
-        ends = tuple(evaluate(p, h) for p in polynomials) if inside else tuple(states[4:])
+        ends = [evaluate(p, h) for p in polynomials] if inside else states[4:]
         x, end = beam.x[e] + a, beam.x[e] + b if inside else beam.x[e + 1]
-        stretches.append(Stretch(x, end, h, polynomials, ends))
+        stretches.append(Stretch(x, end, h, polynomials, tuple(ends)))
         if inside:
-            V, M, phi, v = ends
-            jumping = set()
-            for piece in concentrated.get(b, ()):
-                if piece.kind is Point:
-                    V -= factors[piece.column] * piece.size
-                    jumping.add(SHEAR)
-                else:
-                    M += factors[piece.column] * piece.size
-                    jumping.add(MOMENT)
-            jumps.append(frozenset(jumping))
+            state, jumping = _across(ends, concentrated.get(b, ()), factors)
+            jumps.append(jumping)
     return stretches, jumps
+
+
+_JUMPING = {Point: SHEAR, Couple: MOMENT, Kink: SLOPE, Slip: DEFLECTION}
+_DOWN = {Point, Kink}
+"""Those that make their field jump by minus their size."""
+
+
+def _across(
+    state: Sequence[float], pieces: Sequence[Piece], factors: Sequence[float]
+) -> tuple[list[float], frozenset[int]]:
+    """Return the fields to the right of what is concentrated in a place, and which of them differ from those before."""
+    after = list(state)
+    for piece in pieces:
+        size = factors[piece.column] * piece.size
+        which = _JUMPING[piece.kind]
+        after[which] = after[which] - size if piece.kind in _DOWN else after[which] + size
+    return after, frozenset(_JUMPING[piece.kind] for piece in pieces)
 
 
 def _nearest(breaks: list[float], place: float) -> float:
@@ -200,7 +209,7 @@ def _nearest(breaks: list[float], place: float) -> float:
 
 
 def _polynomials(
-    start: tuple[float, float, float, float], q: float, dq: float, kappa: float, EI: float, GA: float | None
+    start: Sequence[float], q: float, dq: float, kappa: float, EI: float, GA: float | None
 ) -> tuple[Polynomial, Polynomial, Polynomial, Polynomial]:
     """Return the fields under the load q + dq s and the free curvature kappa, from their values at the left end.
 

@@ -23,23 +23,32 @@ from beamfuncs.cells import (
     whole,
 )
 from beamfuncs.documentation import worksheet_function
-from beamfuncs.errors import BeamError, impossible, unreadable
+from beamfuncs.errors import BeamError, impossible, quoted, unreadable
 from beamfuncs.fields import DEFLECTION, MOMENT, SHEAR, SLOPE
+from beamfuncs.governing import SIDES, check, envelope_rows, extreme, reaction_rows, sentence
+from beamfuncs.influence import InfluenceLine, Section, influence_lines
+from beamfuncs.loads import has_two_factors
 from beamfuncs.notation import (
     beam_text,
     clause_text,
     is_load_table,
     read_beam,
     read_clauses,
+    read_combination,
+    read_combinations,
     read_line,
     read_loads,
 )
-from beamfuncs.results import read_phrase
+from beamfuncs.results import check_field, check_forces, forces_need, read_phrase
 from beamfuncs.sentences import beam_sentence, loads_sentence
-from beamfuncs.solving import solved
+from beamfuncs.solving import adverse, solved
+from beamfuncs.standards import combinations as combinations
 
 Rows: TypeAlias = list[list[float | BeamError]]
 """An array result: rows of numbers; an entry that cannot be answered is the error that says why."""
+
+Table: TypeAlias = list[list[float | str]]
+"""An array result with a row of headers."""
 
 POINTS = 21
 MOST_POINTS = 100_000
@@ -340,13 +349,6 @@ def beam_result(
 ) -> float | Rows:
     """Return the result that a phrase names.
 
-    Parameters
-    ----------
-    phrase
-        What is asked for, or a range of it: 'reaction 2', 'reaction moment 1', 'moment at 3', 'shear at 4 left',
-        'deflection at 1 in span 2', 'moment at support 2', 'moment max in span 2', 'position of moment max',
-        'total load'.
-
     Returns
     -------
     A number, or an array in the shape of a range of phrases. A position counts from the left end of the beam,
@@ -373,11 +375,6 @@ def diagram(
 ) -> Rows:
     """Return a table for a chart, a row a place: x, shear, moment, slope, deflection.
 
-    Parameters
-    ----------
-    points
-        Number of evenly spaced places, both ends included; marks and load ends are added to them. Blank or 0: 21.
-
     Returns
     -------
     Rows from left to right, two at every jump: its left side, then its right. Where no stiffness is given, the slopes
@@ -393,11 +390,7 @@ def diagram(
     [4.0, -3.0, 0.0, -0.006, 0.0]
     """
     result = solved(beam, loads, stiffness, combination)
-    cell = frozen("points", points)
-    number_of_points = POINTS if not_given(cell) else _one_whole("points", points)
-    if not 2 <= number_of_points <= MOST_POINTS:
-        raise impossible(f"points: {number_of_points}; give from 2 to {MOST_POINTS}")
-    rows: Rows = [list(row) for row in result.diagram(number_of_points)]
+    rows: Rows = [list(row) for row in result.diagram(_number_of(points))]
     for which in (SLOPE, DEFLECTION):
         try:
             result.check(which)
@@ -422,6 +415,185 @@ def contraflexure(beam: Argument, loads: Argument, stiffness: Argument = None, c
     2.0
     """
     return [[*solved(beam, loads, stiffness, combination).contraflexure()]]
+
+
+# --- over combinations, patterns and moving loads -------------------------------------------------------
+
+
+@worksheet_function
+def highest(
+    beam: Argument, loads: Argument, phrase: Argument, combinations: Argument = None, stiffness: Argument = None
+) -> float | Rows:
+    """Return the highest value of a result over combinations, patterns of the loads and positions of a train.
+
+    Returns
+    -------
+    A number, or an array in the shape of a range of phrases. Algebraic: the worst hogging moment is a lowest one.
+
+    Examples
+    --------
+    >>> highest("pinned 6 pinned 6 pinned", "G: udl 4; Q: udl 8 each span", "reaction 2", "1.35/1.0 G + 1.5 Q")
+    130.5
+    >>> round(highest("pinned 10 pinned", "axles 145 145 spaced 1.2", "moment max"), 9)
+    640.61
+    """
+    return _extreme_over(SIDES["highest"], beam, loads, phrase, combinations, stiffness)
+
+
+@worksheet_function
+def lowest(
+    beam: Argument, loads: Argument, phrase: Argument, combinations: Argument = None, stiffness: Argument = None
+) -> float | Rows:
+    """Return the lowest (most negative) value of a result over combinations, patterns and positions of a train.
+
+    Returns
+    -------
+    A number, or an array in the shape of a range of phrases. A reaction below 0 is uplift.
+
+    Examples
+    --------
+    >>> round(lowest("pinned 4 pinned 2 free", "G: udl 4; Q: udl 9 each span", "reaction 1", [["1.35 G"], ["G + Q"]]), 9)
+    1.5
+    """
+    return _extreme_over(SIDES["lowest"], beam, loads, phrase, combinations, stiffness)
+
+
+@worksheet_function
+def governing(
+    beam: Argument,
+    loads: Argument,
+    phrase: Argument,
+    combinations: Argument = None,
+    stiffness: Argument = None,
+    side: Argument = None,
+) -> str:
+    """Return what governs a result, in words: the combination, the pattern of the loads, where a train stands.
+
+    Parameters
+    ----------
+    side
+        'highest' or 'lowest'. Blank: highest.
+
+    Returns
+    -------
+    Text: the combination, which free loads are there, the position of the first axle, and the place of an extreme.
+
+    Examples
+    --------
+    >>> governing("pinned 6 pinned 6 pinned", "G: udl 4; Q: udl 10 each span", "reaction 1", "1.35 G + 1.5 Q")
+    '1.35 G + 1.5 Q; 1.5 Q on 0 to 6'
+    >>> governing("pinned 10 pinned", "axles 145 145 spaced 1.2", "moment max")
+    'every load once; axles: first axle at x = 4.7, the others to its right; at x = 4.7'
+    """
+    cell = _one_cell("side", side)
+    word = "highest" if not_given(cell) else str(cell).strip().lower()
+    if word not in SIDES:
+        raise unreadable(f"side: {quoted(cell)}; write {' or '.join(SIDES)}")
+    result = adverse(beam, loads, stiffness)
+    every = read_combinations(frozen("combinations", combinations))
+    return sentence(result, extreme(result, read_phrase(_one_cell("phrase", phrase)), every, SIDES[word]))
+
+
+@worksheet_function
+def envelope(
+    beam: Argument,
+    loads: Argument,
+    combinations: Argument = None,
+    points: Argument = None,
+    stiffness: Argument = None,
+) -> Rows:
+    """Return a table for a chart: x, highest and lowest shear, highest and lowest moment, the same for deflection.
+
+    Returns
+    -------
+    Rows from left to right, two at every jump: its left side, then its right. Each value is the extreme of its own
+    place, over combinations, patterns and positions of a train. Without a stiffness the deflections are error values.
+
+    Examples
+    --------
+    >>> for row in envelope("pinned 4 pinned", "G: udl 2; Q: point 6 at 2", [["G"], ["G + Q"]], 3, 1000):
+    ...     print([round(value, 6) for value in row])
+    [0.0, 7.0, 4.0, 0.0, 0.0, 0.0, 0.0]
+    [2.0, 3.0, 0.0, 10.0, 4.0, 0.014667, 0.006667]
+    [2.0, 0.0, -3.0, 10.0, 4.0, 0.014667, 0.006667]
+    [4.0, -4.0, -7.0, 0.0, 0.0, 0.0, 0.0]
+    """
+    result, every = adverse(beam, loads, stiffness), read_combinations(frozen("combinations", combinations))
+    missing = unreadable("stiffness: blank; deflection needs it; give EI, e.g. 24000")
+    return [
+        [missing if one is None else one for one in row] for row in envelope_rows(result, every, _number_of(points))
+    ]
+
+
+@worksheet_function
+def reaction_cases(beam: Argument, loads: Argument, stiffness: Argument = None) -> Table:
+    """Return a table of the reactions [force] and reaction moments [force·length] of each load case, unfactored.
+
+    Returns
+    -------
+    A row of headers; then a row for each reaction, and for each reaction moment of a support that holds it: number of
+    the support, x, which result, a column for each case. A case with patterns or a train has two, highest and lowest.
+
+    Examples
+    --------
+    >>> for row in reaction_cases("fixed 8 pinned", "G: udl 12; Q: point 16 at 4"):
+    ...     print(row)
+    ['support', 'x', 'result', 'G', 'Q']
+    [1.0, 0.0, 'reaction', 60.0, 11.0]
+    [2.0, 8.0, 'reaction', 36.0, 5.0]
+    [1.0, 0.0, 'reaction moment', -96.0, -24.0]
+    """
+    return list(reaction_rows(adverse(beam, loads, stiffness)))
+
+
+@worksheet_function
+def influence(beam: Argument, phrase: Argument, x: Argument, stiffness: Argument = None) -> float | Rows:
+    """Return the ordinate of an influence line: the value of a result where a unit load stands, downward, at a place.
+
+    Parameters
+    ----------
+    phrase
+        The result: 'reaction 2', 'reaction moment 1', 'moment at 3', 'shear at 4 left', 'deflection at 1 in span 2'.
+
+    Returns
+    -------
+    A number, or an array in the shape of a range `x`; at a jump the value to its right, at the right end to its left.
+
+    Notes
+    -----
+    The influence line is the deflected line under the motion that does work with the result (Mueller-Breslau 1886).
+
+    Examples
+    --------
+    >>> influence("pinned 8 pinned", "moment at 4", 2)
+    1.0
+    >>> influence("pinned 4 pinned 4 pinned", "reaction 2", [[0, 2, 4]])
+    [[0.0, 0.6875, 1.0]]
+    """
+    line = _influence_line(beam, phrase, stiffness)
+    whole_beam = read_line(frozen("beam", beam))
+    return _each("x", x, lambda where, cell: line.value(whole_beam.place(number(where, cell, "a place"), where)))
+
+
+@worksheet_function
+def influence_line(beam: Argument, phrase: Argument, points: Argument = None, stiffness: Argument = None) -> Rows:
+    """Return an influence line as a table for a chart, a row a place: x, and the result where a unit load stands there.
+
+    Parameters
+    ----------
+    phrase
+        The result: 'reaction 2', 'reaction moment 1', 'moment at 3', 'shear at 4 left', 'deflection at 1 in span 2'.
+
+    Returns
+    -------
+    Rows from left to right, marks and the place of the result added to the evenly spaced ones; two rows at a jump.
+
+    Examples
+    --------
+    >>> influence_line("pinned 8 pinned", "moment at 2", 5)
+    [[0.0, 0.0], [2.0, 1.5], [4.0, 1.0], [6.0, 0.5], [8.0, 0.0]]
+    """
+    return [list(row) for row in _influence_line(beam, phrase, stiffness).rows(_number_of(points))]
 
 
 # --- text -----------------------------------------------------------------------------------------
@@ -525,7 +697,14 @@ def fault(beam: Argument, loads: Argument, stiffness: Argument = None, combinati
     "loads, clause 1: 'from 2 to 12' ends beyond the beam (length 8)"
     """
     try:
-        solved(beam, loads, stiffness, combination).check_forces()
+        line = read_line(frozen("beam", beam))
+        factors = read_combination(frozen("combination", combination))
+        if read_loads(frozen("loads", loads), line).free or has_two_factors(factors):
+            result = adverse(beam, loads, stiffness)
+            result.loads.ranges(factors)
+            check(result, None)
+        else:
+            solved(beam, loads, stiffness, combination).check_forces()
     except BeamError as error:
         return error.reason
     return ""
@@ -589,6 +768,36 @@ def _extreme(
     result = solved(beam, loads, stiffness, combination)
     number_of_span = None if span is None or not_given(frozen("span", span)) else _one_whole("span", span)
     return result.extreme(which, sign, "span", number_of_span)[0]
+
+
+def _number_of(points: Argument) -> int:
+    """Return the number of places of a table for a chart."""
+    number_of_points = POINTS if not_given(frozen("points", points)) else _one_whole("points", points)
+    if not 2 <= number_of_points <= MOST_POINTS:
+        raise impossible(f"points: {number_of_points}; give from 2 to {MOST_POINTS}")
+    return number_of_points
+
+
+def _extreme_over(
+    sign: int, beam: Argument, loads: Argument, phrase: Argument, combinations: Argument, stiffness: Argument
+) -> float | Rows:
+    result, every = adverse(beam, loads, stiffness), read_combinations(frozen("combinations", combinations))
+    return _each("phrase", phrase, lambda _, cell: extreme(result, read_phrase(cell), every, sign).governing.value)
+
+
+def _influence_line(beam: Argument, phrase: Argument, stiffness: Argument) -> InfluenceLine:
+    line = read_beam(frozen("beam", beam), frozen("stiffness", stiffness))
+    asked = read_phrase(_one_cell("phrase", phrase))
+    if not asked.of_one_place:
+        raise unreadable(
+            "phrase: an influence line belongs to one place; ask for a reaction or for e.g. 'moment at 3', and for the"
+            " highest or lowest of an extreme"
+        )
+    place = asked.place(line)
+    if isinstance(place, Section):
+        check_field(line, place.which)
+    check_forces(forces_need(line, imposed=False))
+    return influence_lines(line, [place])[0]
 
 
 def _each(argument: str, cells: Argument, answer: Callable[[str, Cell], float]) -> float | Rows:

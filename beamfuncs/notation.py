@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Callable, Iterator
+from dataclasses import replace
 from functools import lru_cache
 from math import inf
 
@@ -22,7 +23,7 @@ from beamfuncs.cells import (
     whole,
 )
 from beamfuncs.errors import BeamError, impossible, quoted, unreadable
-from beamfuncs.loads import LOAD_ALIASES, LOAD_KINDS, Clause, Combination, Loads
+from beamfuncs.loads import EACH, LOAD_ALIASES, LOAD_KINDS, Axles, Clause, Combination, Load, Loads
 
 CACHED = 20_480
 """How many readings of each kind are kept: beams, loads, combinations."""
@@ -33,7 +34,9 @@ _SPRING = re.compile(r"spring\s*\((.*)\)", re.IGNORECASE | re.DOTALL)
 _CASE = r"[^\W\d_]\w*"
 _CASE_PREFIX = re.compile(rf"\s*({_CASE})\s*:(.*)", re.DOTALL)
 _CLAUSE_END = re.compile(r"[;\n\r\v\f\x85\u2028\u2029]")
-_TERM = re.compile(rf"\s*([+-]?)\s*(?:({NUMBER})\s*\*?)?\s*({_CASE})?")
+_TERM = re.compile(
+    rf"\s*(?P<sign>[+-]?)\s*(?:(?P<factor>{NUMBER})(?:\s*/\s*(?P<favourable>{NUMBER}))?\s*\*?)?\s*(?P<case>{_CASE})?"
+)
 
 
 # --- the beam -------------------------------------------------------------------------------------
@@ -213,7 +216,7 @@ def _stiffness_words(stiffness: Frozen) -> Iterator[str | float]:
 
 
 @lru_cache(CACHED, typed=True)
-def read_clauses(loads: Frozen) -> tuple[Clause, ...]:
+def read_clauses(loads: Frozen) -> tuple[Clause | Axles, ...]:
     """Return the clauses that a text, a range of texts or a table describes.
 
     >>> [clause.kind for clause in read_clauses("G: udl 5; Q: point 40 at 3")]
@@ -231,10 +234,19 @@ def read_clauses(loads: Frozen) -> tuple[Clause, ...]:
 @lru_cache(CACHED, typed=True)
 def read_loads(loads: Frozen, beam: Beam) -> Loads:
     """Return the loads placed on a beam."""
-    return Loads(tuple(clause.on(beam) for clause in read_clauses(loads)))
+    clauses = read_clauses(loads)
+    placed: list[Load] = []
+    part = 0
+    for clause in clauses:
+        if isinstance(clause, Clause):
+            for load in clause.on(beam):
+                if clause.each:
+                    part += 1
+                placed.append(replace(load, part=part) if clause.each else load)
+    return Loads(tuple(placed), tuple(clause.train for clause in clauses if isinstance(clause, Axles)))
 
 
-def _one_spelling(clauses: tuple[Clause, ...]) -> tuple[Clause, ...]:
+def _one_spelling(clauses: tuple[Clause | Axles, ...]) -> tuple[Clause | Axles, ...]:
     """Return the clauses with each case spelled as where it is first written: `g` and `G` are one case."""
     spelling: dict[str, str] = {}
     for clause in clauses:
@@ -243,13 +255,13 @@ def _one_spelling(clauses: tuple[Clause, ...]) -> tuple[Clause, ...]:
     return tuple(_renamed(clause, spelling) for clause in clauses)
 
 
-def _renamed(clause: Clause, spelling: dict[str, str]) -> Clause:
+def _renamed(clause: Clause | Axles, spelling: dict[str, str]) -> Clause | Axles:
     if clause.case is None or spelling[clause.case.casefold()] == clause.case:
         return clause
-    return Clause(**{**vars(clause), "case": spelling[clause.case.casefold()]})
+    return replace(clause, case=spelling[clause.case.casefold()])
 
 
-def _text_clauses(loads: Frozen) -> Iterator[Clause]:
+def _text_clauses(loads: Frozen) -> Iterator[Clause | Axles]:
     count = 0
     for cell in flat(loads):
         if cell is None:
@@ -264,17 +276,19 @@ def _text_clauses(loads: Frozen) -> Iterator[Clause]:
                 yield _clause(f"loads, clause {count}", text)
 
 
-def _clause(where: str, text: str) -> Clause:
+def _clause(where: str, text: str) -> Clause | Axles:
     prefix = _CASE_PREFIX.fullmatch(text)
     case, rest = (prefix[1], prefix[2]) if prefix else (None, text)
     if ":" in rest:
         raise unreadable(f"{where}: {quoted(text)}: a case is a letter and then letters, digits or _, e.g. 'G: udl 5'")
     words = _Words(where, text, rest.split())
+    if words.take("axles"):
+        return _axles(words, case)
     kind = _load_kind(where, words.next("a load"))
     size = words.number(f"the size, e.g. '{LOAD_KINDS[kind].example}'")
-    parts: dict[str, float | int] = {}
+    parts: dict[str, float | int | str] = {}
 
-    def put(name: str, value: float | int) -> None:
+    def put(name: str, value: float | int | str) -> None:
         if name in parts:
             raise unreadable(f"{where}: {quoted(text)} gives a place twice; write e.g. '{LOAD_KINDS[kind].example}'")
         parts[name] = value
@@ -292,6 +306,8 @@ def _clause(where: str, text: str) -> Clause:
             put("at", words.number())
         elif words.take("in", "span"):
             put("span", words.whole("a span number"))
+        elif each := next((each for each in EACH if words.take("each", each)), None):
+            put("each", each)
         else:
             raise unreadable(
                 f"{where}: {quoted(words.left[0], 30)} in {quoted(text)} is not understood;"
@@ -300,11 +316,28 @@ def _clause(where: str, text: str) -> Clause:
     return Clause(where, kind, size, case=case, **parts)  # type: ignore[arg-type]
 
 
+def _axles(words: _Words, case: str | None) -> Axles:
+    axles = words.numbers("the load of an axle")
+    spacings = words.numbers("a distance between axles") if words.take("spaced") else []
+    both_ways, lane = False, 0.0
+    while words.left:
+        if words.take("both", "ways"):
+            both_ways = True
+        elif words.take("lane", "udl"):
+            lane = words.number("the load of the lane")
+        else:
+            raise unreadable(
+                f"{words.where}: {quoted(words.left[0], 30)} in {quoted(words.text)} is not understood; write e.g."
+                f" '{Axles.example} both ways lane udl 9'"
+            )
+    return Axles(words.where, tuple(axles), tuple(spacings), both_ways, lane, case)
+
+
 def _load_kind(where: str, word: str) -> str:
     name = word.lower()
     name = LOAD_ALIASES.get(name, name)
     if name not in LOAD_KINDS:
-        raise unreadable(f"{where}: {quoted(word, 30)} is not a load; a load is one of {', '.join(LOAD_KINDS)}")
+        raise unreadable(f"{where}: {quoted(word, 30)} is not a load; a load is one of {', '.join(LOAD_KINDS)}, axles")
     return name
 
 
@@ -339,19 +372,38 @@ class _Words:
             raise unreadable(f"{self.where}: {quoted(word)} ends with a comma; clauses are parted by ';'")
         return number(self.where, word)
 
+    def numbers(self, wanted: str) -> list[float]:
+        """Take all numbers that come next, one at least."""
+        taken = [self.number(wanted)]
+        while self.left and is_number(self.left[0]):
+            taken.append(self.number())
+        return taken
+
     def whole(self, wanted: str) -> int:
         return whole(self.where, self.next(wanted), wanted)
 
 
-def clause_text(clause: Clause) -> str:
+def clause_text(clause: Clause | Axles) -> str:
     """Return the canonical text of a clause.
 
-    >>> [clause_text(clause) for clause in read_clauses("g:UNIFORM 12.0 from 2 to 6")]
-    ['g: udl 12 from 2 to 6']
+    >>> [clause_text(clause) for clause in read_clauses("g:UNIFORM 12.0 from 2 to 6; AXLES 80 40 spaced 1.20")]
+    ['g: udl 12 from 2 to 6', 'axles 80 40 spaced 1.2']
     """
+    words = _axles_words(clause) if isinstance(clause, Axles) else _clause_words(clause)
+    return " ".join(words if clause.case is None else [f"{clause.case}:", *words])
+
+
+def _axles_words(clause: Axles) -> list[str]:
+    words = ["axles", *map(as_text, clause.axles)]
+    if clause.spacings:
+        words += ["spaced", *map(as_text, clause.spacings)]
+    if clause.both_ways:
+        words += ["both ways"]
+    return [*words, "lane udl", as_text(clause.lane)] if clause.lane else words
+
+
+def _clause_words(clause: Clause) -> list[str]:
     words = [clause.kind, as_text(clause.size)]
-    if clause.case is not None:
-        words.insert(0, f"{clause.case}:")
     for word, value in (
         ("to", clause.end_size),
         ("from", clause.start),
@@ -362,10 +414,18 @@ def clause_text(clause: Clause) -> str:
     ):
         if value is not None:
             words += [word, as_text(value)]
-    return " ".join(words)
+    return [*words, "each", clause.each] if clause.each else words
 
 
 # --- the load table -------------------------------------------------------------------------------
+
+
+def _each(where: str, cell: Cell) -> str:
+    word = cell.strip().lower() if isinstance(cell, str) else cell
+    if word not in EACH:
+        raise unreadable(f"{where}: {quoted(cell)}; write {' or '.join(EACH)}, or leave it blank")
+    return str(word)
+
 
 HEADERS: dict[str, tuple[str, Callable[[str, Cell], object]]] = {
     "size": ("size", number),
@@ -375,6 +435,7 @@ HEADERS: dict[str, tuple[str, Callable[[str, Cell], object]]] = {
     "at": ("at", number),
     "span": ("span", whole),
     "support": ("support", whole),
+    "each": ("each", _each),
 }
 """The headers of a load table beside `load` and `case`, the part of a clause that each gives, and how it is read."""
 
@@ -437,30 +498,53 @@ def _table_clause(where: str, row: tuple[Cell, ...], header: dict[int, str]) -> 
 def read_combination(combination: Frozen) -> Combination | None:
     """Return the factor of each case that a combination names, or None where it is blank.
 
-    >>> read_combination("1.35 G + 1.5 Q")
-    (('g', 1.35), ('q', 1.5))
+    >>> read_combination("1.35/1.0 G + 1.5 Q")
+    (('g', 1.35, 1.0), ('q', 1.5, None))
     """
     if not_given(combination):
         return None
     if not isinstance(combination, str):
         what = "a range" if isinstance(combination, tuple) else f"the number {combination:g}"
         raise unreadable(f"combination: {what}; write one text such as '1.35 G + 1.5 Q'")
-    factors: dict[str, float] = {}
+    factors: dict[str, tuple[float, float | None]] = {}
     text = combination.strip()
     position = 0
     while position < len(text):
         term = _TERM.match(text, position)
-        if term is None or term[3] is None or (position > 0 and not term[1]):
+        if term is None or term["case"] is None or (position > 0 and not term["sign"]):
             raise _not_a_combination(text, position)
-        factor = number("combination", term[2]) if term[2] else 1.0
-        name = term[3].casefold()
-        factors[name] = factors.get(name, 0.0) + (-factor if term[1] == "-" else factor)
+        sign = -1.0 if term["sign"] == "-" else 1.0
+        factor = sign * (number("combination", term["factor"]) if term["factor"] else 1.0)
+        favourable = sign * number("combination", term["favourable"]) if term["favourable"] else None
+        name = term["case"].casefold()
+        before, two_before = factors.get(name, (0.0, None))
+        if name in factors and not (two_before is None and favourable is None):
+            raise unreadable(f"combination: {quoted(text)} names {term['case']} twice, with two factors; name it once")
+        factors[name] = before + factor, favourable
         position = term.end()
         while position < len(text) and text[position].isspace():
             position += 1
-    if not all(abs(factor) < inf for factor in factors.values()):
+    if not all(abs(factor) < inf for factor, _ in factors.values()):
         raise impossible("combination: the factors of a case add up to more than a number can hold")
-    return tuple(factors.items())
+    return tuple((name, *of_case) for name, of_case in factors.items())
+
+
+EVERY_LOAD_ONCE = "every load once"
+
+
+@lru_cache(CACHED, typed=True)
+def read_combinations(combinations: Frozen) -> tuple[tuple[str, Combination | None], ...]:
+    """Return each combination of a range with its text, blanks skipped; every load once where all is blank.
+
+    >>> [text for text, _ in read_combinations((("1.35 G",), (None,), ("G + Q",)))]
+    ['1.35 G', 'G + Q']
+    """
+    if isinstance(combinations, tuple):
+        texts = [cell for cell in flat(combinations) if not not_given(cell)]
+    else:
+        texts = [] if not_given(combinations) else [combinations]
+    found = tuple((str(text).strip(), read_combination(text)) for text in texts)
+    return found or ((EVERY_LOAD_ONCE, None),)
 
 
 def _not_a_combination(text: str, position: int) -> BeamError:

@@ -12,6 +12,7 @@ from beamfuncs.beam import Beam
 from beamfuncs.cells import Cell, decimal_comma, number, whole
 from beamfuncs.errors import absent, impossible, quoted, unreadable
 from beamfuncs.fields import DEFLECTION, FIELDS, LEFT, RIGHT, SLOPE, Fields, fields
+from beamfuncs.influence import Held, Section
 from beamfuncs.loads import Loads
 from beamfuncs.stiffness import Solution
 
@@ -33,6 +34,21 @@ class Phrase:
     side: str | None = None
     sign: int | None = None
     position: bool = False
+
+    @property
+    def of_one_place(self) -> bool:
+        """Whether it asks for what one place or one support has: a linear function of the loads."""
+        return self.quantity != TOTAL_LOAD and self.sign is None
+
+    def place(self, beam: Beam) -> Section | Held:
+        """Return the place and the quantity that a phrase names which asks for no extreme."""
+        mark = None if self.support is None else beam.support(self.support, "phrase")
+        if self.quantity in (REACTION, REACTION_MOMENT):
+            assert mark is not None
+            return Held(mark, turns=self.quantity == REACTION_MOMENT)
+        x = self.x if mark is None else beam.x[mark]
+        assert x is not None
+        return section_at(beam, FIELDS.index(self.quantity), x, "phrase", self.span, self.side)
 
 
 @dataclass(frozen=True)
@@ -62,28 +78,18 @@ class Result:
     @cached_property
     def forces_need(self) -> str | None:
         """What makes the forces depend on the stiffness that is not given, or None."""
-        if self.beam.stiffness or self.beam.redundancy == 0:
-            return None
-        if any(mark.sprung for mark in self.beam.marks):
-            return "springs"
-        if any(mark.kind == "step" for mark in self.beam.marks):
-            return "a step of the stiffness"
-        named = dict(zip(self.loads.cases, self.factors, strict=True))
-        if any(load.imposed and load.size and named[load.case] for load in self.loads.loads):
-            return "imposed settlements, rotations or curvatures"
-        return None
+        factors = dict(zip(self.loads.columns, self.factors, strict=True))
+        return forces_need(
+            self.beam, any(load.imposed and load.size and factors[load.case, load.part] for load in self.loads.loads)
+        )
 
     def check_forces(self) -> None:
         """Raise where the forces depend on a stiffness that is not given."""
-        if self.forces_need:
-            raise unreadable(
-                f"stiffness: blank; the forces depend on it (statically indeterminate, {self.forces_need}); give EI"
-            )
+        check_forces(self.forces_need)
 
     def check(self, which: int) -> None:
         """Raise where a field depends on a stiffness that is not given."""
-        if which in (SLOPE, DEFLECTION) and not self.beam.stiffness:
-            raise unreadable(f"stiffness: blank; {FIELDS[which]} needs it; give EI, e.g. 24000")
+        check_field(self.beam, which)
         self.check_forces()
 
     # --- answers ------------------------------------------------------------------------------------------
@@ -108,15 +114,9 @@ class Result:
 
         Without a side it is the right one, at the right end of the beam or of a named span the left one.
         """
-        place = self.beam.place(x, argument, span)
-        if side is None and place >= self.beam.extent(argument, span)[1] - self.beam.near:
-            side = LEFT
-        if side == LEFT and place <= self.beam.near:
-            raise absent(f"{argument}: x = 0 is the left end; there is no beam to the left of it")
-        if side == RIGHT and place >= self.beam.length - self.beam.near:
-            raise absent(f"{argument}: x = {place:.12g} is the right end; there is no beam to the right of it")
+        section = section_at(self.beam, which, x, argument, span, side)
         self.check(which)
-        return _finite(self.fields.value(which, place, side or RIGHT))
+        return _finite(self.fields.value(which, section.x, section.side))
 
     def extreme(self, which: int, sign: int, argument: str = "span", span: int | None = None) -> tuple[float, float]:
         """Return the largest (`sign` 1) or smallest (-1) value of a field in a span or the beam, and its place."""
@@ -132,19 +132,15 @@ class Result:
         """Return what a phrase asks for."""
         if phrase.quantity == TOTAL_LOAD:
             return self.total_load
-        if phrase.quantity == REACTION and phrase.support is not None:
-            return self.reaction(phrase.support, "phrase")
-        if phrase.quantity == REACTION_MOMENT and phrase.support is not None:
-            return self.reaction_moment(phrase.support, "phrase")
-        which = FIELDS.index(phrase.quantity)
         if phrase.sign is not None:
-            value, place = self.extreme(which, phrase.sign, "phrase", phrase.span)
+            value, place = self.extreme(FIELDS.index(phrase.quantity), phrase.sign, "phrase", phrase.span)
             return place if phrase.position else value
-        x = phrase.x
-        if phrase.support is not None:
-            x = self.beam.x[self.beam.support(phrase.support, "phrase")]
-        assert x is not None
-        return self.value(which, x, "phrase", phrase.span, phrase.side)
+        asked = phrase.place(self.beam)
+        if isinstance(asked, Section):
+            self.check(asked.which)
+            return _finite(self.fields.value(asked.which, asked.x, asked.side))
+        self.check_forces()
+        return (self.reaction_moments if asked.turns else self.reactions)[asked.mark]
 
     def contraflexure(self) -> list[float]:
         """Return the places where the moment changes sign."""
@@ -159,6 +155,46 @@ class Result:
         self.check_forces()
         for x, side in self.fields.stations(points):
             yield [x, *(_finite(self.fields.value(which, x, side)) for which in range(len(FIELDS)))]
+
+
+def section_at(
+    beam: Beam, which: int, x: float, argument: str = "x", span: int | None = None, side: str | None = None
+) -> Section:
+    """Return a field at a place counted from the left end, or from the left support of a span.
+
+    Without a side it is the right one, at the right end of the beam or of a named span the left one.
+    """
+    place = beam.place(x, argument, span)
+    if side is None and place >= beam.extent(argument, span)[1] - beam.near:
+        side = LEFT
+    if side == LEFT and place <= beam.near:
+        raise absent(f"{argument}: x = 0 is the left end; there is no beam to the left of it")
+    if side == RIGHT and place >= beam.length - beam.near:
+        raise absent(f"{argument}: x = {place:.12g} is the right end; there is no beam to the right of it")
+    return Section(which, place, side or RIGHT)
+
+
+def forces_need(beam: Beam, imposed: bool) -> str | None:
+    """Return what makes the forces depend on the stiffness that is not given, or None."""
+    if beam.stiffness or beam.redundancy == 0:
+        return None
+    if any(mark.sprung for mark in beam.marks):
+        return "springs"
+    if any(mark.kind == "step" for mark in beam.marks):
+        return "a step of the stiffness"
+    return "imposed settlements, rotations or curvatures" if imposed else None
+
+
+def check_forces(need: str | None) -> None:
+    """Raise where the forces depend on a stiffness that is not given."""
+    if need:
+        raise unreadable(f"stiffness: blank; the forces depend on it (statically indeterminate, {need}); give EI")
+
+
+def check_field(beam: Beam, which: int) -> None:
+    """Raise where slope or deflection is asked for without a stiffness."""
+    if which in (SLOPE, DEFLECTION) and not beam.stiffness:
+        raise unreadable(f"stiffness: blank; {FIELDS[which]} needs it; give EI, e.g. 24000")
 
 
 def _finite(value: float) -> float:

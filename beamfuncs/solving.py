@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from functools import lru_cache
 
+from beamfuncs.adverse import Adverse
 from beamfuncs.beam import Beam
 from beamfuncs.cells import Argument, Frozen, frozen
 from beamfuncs.loads import Loads
@@ -35,6 +36,17 @@ def combined(beam: Frozen, loads: Frozen, stiffness: Frozen, combination: Frozen
     placed = read_loads(frozen("loads", loads), line)
     factors = placed.factors(read_combination(frozen("combination", combination)))
     return Result.of(columns(line, placed), factors)
+
+
+def adverse(beam: Argument, loads: Argument, stiffness: Argument) -> Adverse:
+    """Return the solved beam whose free loads act where they are adverse."""
+    return _adverse(frozen("beam", beam), frozen("loads", loads), frozen("stiffness", stiffness))
+
+
+@lru_cache(KEPT // 20, typed=True)
+def _adverse(beam: Frozen, loads: Frozen, stiffness: Frozen) -> Adverse:
+    line = read_beam(beam, stiffness)
+    return Adverse(columns(line, read_loads(loads, line)))
 
 
 @lru_cache(KEPT)

@@ -22,7 +22,19 @@ from scipy.linalg.lapack import dpbtrf, dpbtrs
 
 from beamfuncs.beam import Beam
 from beamfuncs.errors import BeamError, impossible
-from beamfuncs.loads import Couple, Curvature, Distributed, Load, Loads, Point, Rotation, Settlement
+from beamfuncs.loads import (
+    Couple,
+    Curvature,
+    Distributed,
+    Inner,
+    Kink,
+    Load,
+    Loads,
+    Point,
+    Rotation,
+    Settlement,
+    Slip,
+)
 from beamfuncs.stability import mechanism
 
 Array: TypeAlias = NDArray[np.float64]
@@ -46,7 +58,7 @@ MOST_CORRECTIONS = 12
 class Piece(NamedTuple):
     """A load on one element: its extent from the element's left end, its sizes there, and the column of its case."""
 
-    kind: type[Load]
+    kind: type[Load | Kink | Slip]
     start: float
     end: float
     size: float
@@ -98,7 +110,7 @@ class Combined(NamedTuple):
 
 @dataclass(frozen=True)
 class Solution:
-    """A solved beam: a column of results for each case of its loads, and the loads of each element."""
+    """A solved beam: a column of results for each of its loads' `columns`, and the loads of each element."""
 
     beam: Beam
     loads: Loads
@@ -107,7 +119,7 @@ class Solution:
 
     def combined(self, factors: Sequence[float]) -> Combined:
         """Return the linear combination of the columns with these factors."""
-        values: list[float] = (factors @ self.columns + 0.0).tolist()
+        values: list[float] = (np.asarray(factors) @ self.columns + 0.0).tolist()
         elements, marks = len(self.beam.lengths), len(self.beam.marks)
         ends = [values[8 * e : 8 * e + 8] for e in range(elements)]
         rest = values[8 * elements :]
@@ -115,21 +127,23 @@ class Solution:
 
 
 def solve(beam: Beam, loads: Loads) -> Solution:
-    """Return the solution of a beam for each case of its loads; EI = 1 stands in where no stiffness is given."""
+    """Return the solution of a beam for each column of its loads; EI = 1 stands in where no stiffness is given."""
     loose = mechanism(beam)
     if loose:
         raise loose
     system = _System(beam)
-    cases = [_Case(len(beam.lengths), len(beam.marks)) for _ in loads.cases]
-    columns = {case: column for column, case in enumerate(loads.cases)}
+    cases = [_Case(len(beam.lengths), len(beam.marks)) for _ in loads.columns]
+    columns = {column: number for number, column in enumerate(loads.columns)}
     pieces: list[list[Piece]] = [[] for _ in beam.lengths]
-    for load in loads.loads:
-        column = columns[load.case]
+    for load in (*loads.loads, *loads.causes):
+        column = columns[load.case, load.part]
         for e, piece in _placed(beam, load, column, cases[column]):
             pieces[e].append(piece)
             cases[column].add(e, piece, system.elements[e])
     factor = system.factor()
-    return Solution(beam, loads, tuple(map(tuple, pieces)), np.array([system.column(case, factor) for case in cases]))
+    columns_of = [system.column(case, factor) for case in cases]
+    values = 8 * len(beam.lengths) + 2 * len(beam.marks) + 1
+    return Solution(beam, loads, tuple(map(tuple, pieces)), np.array(columns_of).reshape(-1, values))
 
 
 # --- the loads of a case --------------------------------------------------------------------------
@@ -166,6 +180,10 @@ class _Case:
         if piece.kind is Curvature:
             turn = 2 * half * piece.size
             i, j = turn * (1.0 - middle / L), -turn * middle / L
+        elif piece.kind is Kink:
+            i, j = piece.size * (1.0 - middle / L), -piece.size * middle / L
+        elif piece.kind is Slip:
+            i = j = -piece.size / L
         elif piece.kind is Couple:
             rest, C = L - middle, piece.size
             i = C * (rest * rest / 2 - L * L / 6) / (L * EI) + (C / (GA * L) if GA else 0.0)
@@ -194,9 +212,11 @@ def _turn(s: float, L: float, half: float, force: float, lean: float) -> float:
     return force * (L * L * s - s**3 - half**2 * s) + lean * half**2 / 3 * (L * L - 3 * s * s - 0.6 * half**2)
 
 
-def _placed(beam: Beam, load: Load, column: int, case: _Case) -> Iterator[tuple[int, Piece]]:
+def _placed(beam: Beam, load: Load | Inner, column: int, case: _Case) -> Iterator[tuple[int, Piece]]:
     """Put a load on nodes and supports into its case, and yield what acts on elements, cut at the marks."""
-    if isinstance(load, Settlement):
+    if isinstance(load, Inner):
+        yield load.element, Piece(load.kind, load.s, load.s, 1.0, 1.0, column)
+    elif isinstance(load, Settlement):
         case.settlement[load.mark] += load.size
     elif isinstance(load, Rotation):
         case.rotation[load.mark] += load.size

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import re
 from collections import Counter
 from fractions import Fraction
 from pathlib import Path
@@ -10,10 +11,12 @@ from typing import Any
 
 import openpyxl
 import pytest
+from printed import Factors, printed
 from scipy.optimize import minimize_scalar
 
 from beamfuncs.functions import beam_result, contraflexure
 from beamfuncs.hosts.headless.filling import fill
+from beamfuncs.standards import combinations
 
 Row = dict[str, Any]
 Ask = dict[str, Any]
@@ -30,7 +33,6 @@ TIE = 1 + 1e-9
 """Lets a figure exactly half way between two printed ones (0.4375 as 0.438) pass in floats."""
 
 WAITING = {
-    "combinations": {"standard combinations": 56},
     "foundation_shear": {"elastic foundation": 20, "shear factors of sections": 4},
     "limits": {"deflection limits": 28},
     "moving_loads": {"moving loads: the governing place is to be found": 90},
@@ -45,7 +47,9 @@ def asks(row: Row) -> list[Ask]:
     return ask if isinstance(ask, list) else [ask]
 
 
-QUESTIONS = {f"{row['id']}/{count}": (row, ask) for row in ROWS for count, ask in enumerate(asks(row), 1)}
+ASKED = {f"{row['id']}/{count}": (row, ask) for row in ROWS for count, ask in enumerate(asks(row), 1)}
+LISTS = {name: (row, ask) for name, (row, ask) in ASKED.items() if "standard" in ask}
+QUESTIONS = {name: asked for name, asked in ASKED.items() if name not in LISTS}
 IN_A_WORKBOOK = [name for name, (_, ask) in QUESTIONS.items() if "phrase" in ask and "vary" not in ask][::9]
 
 
@@ -107,6 +111,32 @@ def test_published_figure(name: str) -> None:
     assert agrees(row, given), f"{row['quantity']}: {given!r}, printed {row['value']}"
     assert not agrees(row, given + 3 * tolerance(row))
     assert not agrees(row, given - 3 * tolerance(row))
+
+
+def listed(ask: Ask) -> list[Factors]:
+    """Return the factors of every combination that the function lists."""
+    rows = combinations(ask["standard"], ask["actions"], ask.get("leading"), ask.get("factors"))
+    return [factors for [text] in rows for factors in printed(text)]
+
+
+@pytest.mark.parametrize("name", [name for name, (_, ask) in LISTS.items() if "printed" in ask])
+def test_published_factor(name: str) -> None:
+    """The greatest, or least, factor of a case in the list is the printed one, exactly."""
+    row, ask = LISTS[name]
+    case, choose = (ask["greatest"], max) if "greatest" in ask else (ask["least"], min)
+    numbers = re.findall(r"[0-9]+(?:\.[0-9]+)?", row["value"])
+    assert choose(factors.get(case, 0) for factors in listed(ask)) == Fraction(numbers[ask["printed"] - 1])
+
+
+@pytest.mark.parametrize("name", [name for name, (_, ask) in LISTS.items() if "printed" not in ask])
+def test_published_combination(name: str) -> None:
+    """The list has every combination that the printed line allows; with any factor a hundredth off, it has it not."""
+    row, ask = LISTS[name]
+    found = listed(ask)
+    for wanted in (one for text in ask.get("text", row["value"]).split(";") for one in printed(text)):
+        assert wanted in found, ask
+        for case in wanted:
+            assert wanted | {case: wanted[case] + Fraction(1, 100)} not in found
 
 
 @pytest.mark.parametrize("table", TABLES)

@@ -1,0 +1,164 @@
+"""The highest and the lowest of a result, every free part of the loads being there only where it is adverse.
+
+What the parts do to a result is added up, each with that one of its two factors which makes more of it: superposition,
+linear in the number of parts. Along the beam the sum is a polynomial between the places where some part changes its
+sign, so that its extremes are at these places, at the ends, or where the derivative is zero.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass, field
+from functools import cached_property
+from typing import NamedTuple, cast
+
+import numpy as np
+
+from beamfuncs import anywhere
+from beamfuncs.beam import Beam
+from beamfuncs.fields import Fields, Stretch, evaluate, fields
+from beamfuncs.influence import Held, InfluenceLine, Section, influence_lines
+from beamfuncs.loads import Combination, Factors, Loads, Train
+from beamfuncs.parts import chosen_factors, pieces, upper_bound
+from beamfuncs.stiffness import Array, Solution
+from beamfuncs.trains import Position, extremes
+
+HIGHEST, LOWEST = 1, -1
+
+
+class Governing(NamedTuple):
+    """An extreme, and what makes it.
+
+    `chosen` holds the factor of each column of the loads, `positions` where each train stands (None: it is absent), `x`
+    the place, where one is sought.
+    """
+
+    value: float
+    chosen: tuple[float, ...]
+    positions: tuple[Position | None, ...]
+    x: float | None = None
+
+
+@dataclass(frozen=True)
+class Adverse:
+    """A solved beam, ready to answer for the extremes of its results."""
+
+    solution: Solution
+    _lines: dict[Section | Held, InfluenceLine] = field(default_factory=dict, compare=False)
+
+    @property
+    def beam(self) -> Beam:
+        return self.solution.beam
+
+    @property
+    def loads(self) -> Loads:
+        return self.solution.loads
+
+    # --- one result ---------------------------------------------------------------------------------------
+
+    def at(self, result: Section | Held, combination: Combination | None, sign: int) -> Governing:
+        """Return the extreme of a result of one place, the highest (`sign` 1) or the lowest (-1)."""
+        columns, trains = self.loads.ranges(combination)
+        return self.extreme(result, columns, trains, sign)
+
+    def total(self, combination: Combination | None, sign: int) -> Governing:
+        """Return the extreme of the total load, what stands on the beam of trains not counted."""
+        columns, _ = self.loads.ranges(combination)
+        value, chosen = chosen_factors(self.solution.columns[:, -1], columns, sign)
+        return Governing(value, chosen, ())
+
+    def extreme(
+        self, result: Section | Held, columns: Sequence[Factors], trains: Sequence[Factors], sign: int
+    ) -> Governing:
+        """Return the extreme of a result of one place under columns and trains with these factors."""
+        value, chosen = chosen_factors(self._column_values(result), columns, sign)
+        positions: list[Position | None] = []
+        for train, factors in zip(self.loads.trains, trains, strict=True):
+            line = self.line(result)
+            moved, position = _train(line, train, factors, sign)
+            value += moved + _lane(line, train, factors, sign)
+            positions.append(position)
+        return Governing(value + 0.0, chosen, tuple(positions))
+
+    def line(self, result: Section | Held) -> InfluenceLine:
+        """Return the influence line of a result."""
+        if result not in self._lines:
+            self._lines[result] = influence_lines(self.beam, [result])[0]
+        return self._lines[result]
+
+    def prepare(self, results: Sequence[Section | Held]) -> None:
+        """Find the influence lines of many results at once, where there are trains."""
+        if self.loads.trains:
+            new = [result for result in results if result not in self._lines]
+            self._lines.update(zip(new, influence_lines(self.beam, new), strict=True))
+
+    def _column_values(self, result: Section | Held) -> Array:
+        if isinstance(result, Section):
+            return self._fields_at(result)
+        marks, values = len(self.beam.marks), 8 * len(self.beam.lengths)
+        return self.solution.columns[:, values + result.mark + marks * result.turns]
+
+    def _fields_at(self, section: Section) -> Array:
+        value = self._along.value(section.which, section.x, section.side)
+        return np.broadcast_to(np.asarray(value, float), (len(self.loads.columns),))
+
+    def stations(self, number: int) -> Iterator[tuple[float, str]]:
+        """Yield evenly spaced places and every break, from left to right, with both sides of every jump."""
+        return self._along.stations(number)
+
+    @cached_property
+    def _along(self) -> Fields:
+        """The fields of all columns at once: every number in them is a vector, an entry a column."""
+        columns = self.solution.columns
+        ends = [list(columns[:, 8 * e : 8 * e + 8].T) for e in range(len(self.beam.lengths))]
+        return fields(self.solution, cast("list[list[float]]", ends), cast("list[float]", list(np.eye(len(columns)))))
+
+    # --- anywhere in a span or the beam -------------------------------------------------------------------
+
+    def anywhere(self, which: int, combination: Combination | None, sign: int, start: float, end: float) -> Governing:
+        """Return the largest value of a field between two marks under the loads that make it largest (`sign` 1), or
+        the smallest under those that make it smallest (-1)."""
+        columns, trains = self.loads.ranges(combination)
+        if self.loads.trains:
+            x, side = anywhere.place(self, which, columns, trains, sign, start, end)
+            section = Section(which, x, side)
+            return self.extreme(section, columns, trains, sign)._replace(x=x)
+        best, place, chosen = -np.inf, start, np.zeros(0)
+        for bound, stretch, polynomials in self._by_bound(which, columns, sign, start, end):
+            if bound <= best:
+                break
+            for piece in pieces(polynomials, columns, stretch.length):
+                for s in (piece.start, *piece.stationary, piece.end):
+                    value = evaluate(piece.polynomial, s)
+                    if value > best:
+                        best, place, chosen = value, stretch.x + s, piece.factors
+        return Governing(sign * best + 0.0, tuple(chosen.tolist()), (), place)
+
+    def _by_bound(
+        self, which: int, columns: Sequence[Factors], sign: int, start: float, end: float
+    ) -> list[tuple[float, Stretch, Array]]:
+        """Return the stretches with the polynomials of the columns, those that may hold the extreme first."""
+        found = []
+        for stretch, polynomials in self.stretches(which, start, end):
+            towards = sign * polynomials
+            found.append((upper_bound(towards, columns, stretch.length), stretch, towards))
+        return sorted(found, key=lambda one: -one[0])
+
+    def stretches(self, which: int, start: float, end: float) -> Iterator[tuple[Stretch, Array]]:
+        """Yield the stretches between two marks, with the polynomial of a field for each column: a row a power."""
+        n = len(self.loads.columns)
+        for stretch in self._along.within(start, end):
+            rows = [np.broadcast_to(np.asarray(c, float), (n,)) for c in stretch.polynomials[which]]
+            yield stretch, np.array(rows)
+
+
+def _train(line: InfluenceLine, train: Train, factors: Factors, sign: int) -> tuple[float, Position | None]:
+    options: list[tuple[float, Position | None]] = [(0.0, None)]
+    options += [(factor * p.value, p) for p in extremes(line, train) for factor in factors]
+    return max(options, key=lambda option: sign * option[0])
+
+
+def _lane(line: InfluenceLine, train: Train, factors: Factors, sign: int) -> float:
+    if not train.lane:
+        return 0.0
+    return sign * sum(max(sign * factor * train.lane * area for factor in factors) for area in line.areas)
