@@ -9,6 +9,7 @@ from __future__ import annotations
 import inspect
 import logging
 import math
+import reprlib
 from collections.abc import Callable, Iterable
 from contextlib import suppress
 from decimal import Decimal
@@ -50,6 +51,8 @@ _TALL = 10_000
 _LOG_SIZE, _OLD_LOGS, _LONGEST_CALL = 1_000_000, 1, 300
 
 _log = logging.getLogger(__name__)
+_brief = reprlib.Repr()  # the first cells of a range: each of ten thousand entries in error writes its call
+_brief.maxstring = _brief.maxother = 100
 
 
 def _served(entry: Entry) -> Callable[..., object]:
@@ -102,9 +105,11 @@ def _values(reference: Any) -> object:
     if areas > 1:
         return unreadable(f"a reference to {areas} areas was given; give one rectangle of cells")
     if reference.Rows.Count > _TALL:
-        used = reference.Worksheet.UsedRange
-        rows = used.Row + used.Rows.Count - reference.Row
-        reference = reference.Resize(max(1, min(rows, reference.Rows.Count)), reference.Columns.Count)
+        sheet, top, left = reference.Worksheet, reference.Row, reference.Column
+        used = sheet.UsedRange
+        rows = max(1, min(used.Row + used.Rows.Count - top, reference.Rows.Count))
+        last = sheet.Cells(top + rows - 1, left + reference.Columns.Count - 1)
+        reference = sheet.Range(sheet.Cells(top, left), last)  # pywin32 gives one cell for Resize(rows, columns)
     return _exact(reference.Value, lambda: reference.Value2)
 
 
@@ -152,7 +157,7 @@ def _shown(result: object, entry: Entry, arguments: tuple[object, ...]) -> objec
 
 def _failed(error: BeamError, entry: Entry, arguments: tuple[object, ...]) -> int:
     """Return the code of an error value, its reason written to the log."""
-    call = f"{entry.name}({', '.join(map(repr, arguments))})"
+    call = f"{entry.name}({', '.join(map(_brief.repr, arguments))})"
     _note(f"{error.value} {error.reason} | {call[:_LONGEST_CALL]}")
     if error.value in _NUMBERS:
         return _NUMBERS[error.value]
@@ -171,6 +176,11 @@ def _note(line: str) -> None:
             _log.addHandler(log)
             _log.propagate = False
         _log.error(line)
+
+
+def __dir__() -> list[str]:
+    """Hide the functions from xlwings' own import of functions: its VBA would show the code of an error as a number."""
+    return []
 
 
 globals().update({name: _served(entry) for name, entry in catalogue().items()})
