@@ -46,8 +46,8 @@ _UNKNOWN = "#ERR{}!"
 _ERROR_BAND = range(-0x7FF60000, -0x7FF50000)
 """COM hands an error value over as the int 0x800A0000 + its code, signed."""
 
-_TALL = 10_000
-"""A range of more rows is cut at the end of what its sheet uses: whole columns are often given."""
+_MANY = 100_000
+"""A range of more cells is cut at the end of what its sheet uses: whole columns are often given."""
 _LOG_SIZE, _OLD_LOGS, _LONGEST_CALL = 1_000_000, 1, 300
 
 _log = logging.getLogger(__name__)
@@ -104,11 +104,12 @@ def _values(reference: Any) -> object:
     areas = reference.Areas.Count
     if areas > 1:
         return unreadable(f"a reference to {areas} areas was given; give one rectangle of cells")
-    if reference.Rows.Count > _TALL:
-        sheet, top, left = reference.Worksheet, reference.Row, reference.Column
-        used = sheet.UsedRange
+    if reference.CountLarge > _MANY:
+        sheet, used = reference.Worksheet, reference.Worksheet.UsedRange
+        top, left = reference.Row, reference.Column
         rows = max(1, min(used.Row + used.Rows.Count - top, reference.Rows.Count))
-        last = sheet.Cells(top + rows - 1, left + reference.Columns.Count - 1)
+        columns = max(1, min(used.Column + used.Columns.Count - left, reference.Columns.Count))
+        last = sheet.Cells(top + rows - 1, left + columns - 1)
         reference = sheet.Range(sheet.Cells(top, left), last)  # pywin32 gives one cell for Resize(rows, columns)
     return _exact(reference.Value, lambda: reference.Value2)
 
@@ -128,8 +129,6 @@ def _exact(values: object, plain: Callable[[], object]) -> object:
 
 def _argument(value: object) -> Any:
     """Return what was read as the functions take it."""
-    if isinstance(value, BeamError):
-        raise value
     if isinstance(value, (tuple, list)):
         return [_argument(one) for one in value]
     if isinstance(value, int) and value in _ERROR_BAND:
