@@ -193,7 +193,7 @@ def test_each_kind_of_argument_arrives_as_a_function_expects_it(tmp_path: Path) 
         True,
         None,
         ErrorValue("#DIV/0!"),
-        0.0,
+        "",
         [["fixed 8 pinned", ErrorValue("#N/A")], [2.5, None]],
         "text",
         [[1.0, 2.0], [3.0, 4.0]],
