@@ -92,7 +92,7 @@ def _cell(where: str, value: object) -> Cell:
     if isinstance(value, ErrorValue):
         raise handed_on(where, value)
     if isinstance(value, BeamError):
-        raise handed_on(where, ErrorValue(value.value))
+        raise BeamError(value.value, f"{where}: {value.reason}")
     if isinstance(value, str):
         return str(value) if value and not value.isspace() else None
     if isinstance(value, bool) or type(value).__name__ in ("bool", "bool_"):

@@ -193,11 +193,26 @@ def test_each_kind_of_argument_arrives_as_a_function_expects_it(tmp_path: Path) 
         True,
         None,
         ErrorValue("#DIV/0!"),
-        0.0,
+        "",
         [["fixed 8 pinned", ErrorValue("#N/A")], [2.5, None]],
         "text",
         [[1.0, 2.0], [3.0, 4.0]],
     ]
+
+
+@pytest.mark.parametrize("formula", ["moment_at(A1,B1,)", "moment_at(A1,B1,,)", "reaction(A1, ,1)", "reaction(,B1,1)"])
+def test_an_argument_left_out_is_blank_and_not_0(formula: str, tmp_path: Path) -> None:
+    """The engine gives 0 for it, which would be the moment at the left end."""
+    cells = {
+        "A1": "fixed 8 pinned",
+        "B1": "udl 12",
+        "C1": f"={formula}",
+        "C2": "=deflection_max(A1,B1,,24000)+IF(1=1,,5)",
+    }
+    report = fill(build(tmp_path / "book.xlsx", cells))
+    assert [(fault.cell, fault.value) for fault in report.errors] == [("C1", "#VALUE!")]
+    assert "blank" in report.errors[0].reason
+    assert values(report.target)["C2"] == deflection_max("fixed 8 pinned", "udl 12", None, 24000)
 
 
 def test_error_arguments_are_error_values_not_texts(tmp_path: Path) -> None:

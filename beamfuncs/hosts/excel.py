@@ -9,6 +9,7 @@ from __future__ import annotations
 import inspect
 import logging
 import math
+import reprlib
 from collections.abc import Callable, Iterable
 from contextlib import suppress
 from decimal import Decimal
@@ -45,11 +46,13 @@ _UNKNOWN = "#ERR{}!"
 _ERROR_BAND = range(-0x7FF60000, -0x7FF50000)
 """COM hands an error value over as the int 0x800A0000 + its code, signed."""
 
-_TALL = 10_000
-"""A range of more rows is cut at the end of what its sheet uses: whole columns are often given."""
+_MANY = 100_000
+"""A range of more cells is cut at the end of what its sheet uses: whole columns are often given."""
 _LOG_SIZE, _OLD_LOGS, _LONGEST_CALL = 1_000_000, 1, 300
 
 _log = logging.getLogger(__name__)
+_brief = reprlib.Repr()  # the first cells of a range: each of ten thousand entries in error writes its call
+_brief.maxstring = _brief.maxother = 100
 
 
 def _served(entry: Entry) -> Callable[..., object]:
@@ -101,10 +104,13 @@ def _values(reference: Any) -> object:
     areas = reference.Areas.Count
     if areas > 1:
         return unreadable(f"a reference to {areas} areas was given; give one rectangle of cells")
-    if reference.Rows.Count > _TALL:
-        used = reference.Worksheet.UsedRange
-        rows = used.Row + used.Rows.Count - reference.Row
-        reference = reference.Resize(max(1, min(rows, reference.Rows.Count)), reference.Columns.Count)
+    if reference.CountLarge > _MANY:
+        sheet, used = reference.Worksheet, reference.Worksheet.UsedRange
+        top, left = reference.Row, reference.Column
+        rows = max(1, min(used.Row + used.Rows.Count - top, reference.Rows.Count))
+        columns = max(1, min(used.Column + used.Columns.Count - left, reference.Columns.Count))
+        last = sheet.Cells(top + rows - 1, left + columns - 1)
+        reference = sheet.Range(sheet.Cells(top, left), last)  # pywin32 gives one cell for Resize(rows, columns)
     return _exact(reference.Value, lambda: reference.Value2)
 
 
@@ -123,8 +129,6 @@ def _exact(values: object, plain: Callable[[], object]) -> object:
 
 def _argument(value: object) -> Any:
     """Return what was read as the functions take it."""
-    if isinstance(value, BeamError):
-        raise value
     if isinstance(value, (tuple, list)):
         return [_argument(one) for one in value]
     if isinstance(value, int) and value in _ERROR_BAND:
@@ -152,7 +156,7 @@ def _shown(result: object, entry: Entry, arguments: tuple[object, ...]) -> objec
 
 def _failed(error: BeamError, entry: Entry, arguments: tuple[object, ...]) -> int:
     """Return the code of an error value, its reason written to the log."""
-    call = f"{entry.name}({', '.join(map(repr, arguments))})"
+    call = f"{entry.name}({', '.join(map(_brief.repr, arguments))})"
     _note(f"{error.value} {error.reason} | {call[:_LONGEST_CALL]}")
     if error.value in _NUMBERS:
         return _NUMBERS[error.value]
@@ -171,6 +175,11 @@ def _note(line: str) -> None:
             _log.addHandler(log)
             _log.propagate = False
         _log.error(line)
+
+
+def __dir__() -> list[str]:
+    """Hide the functions from xlwings' own import of functions: its VBA would show the code of an error as a number."""
+    return []
 
 
 globals().update({name: _served(entry) for name, entry in catalogue().items()})

@@ -48,10 +48,11 @@ End Sub
 
 ' Name the add-in by its folder on this machine, in a workbook that names it by the folder of another.
 Public Sub BeamFuncsRelink()
-    Dim link As Variant
+    Dim link As Variant, file As String
     If IsEmpty(ActiveWorkbook.LinkSources(xlExcelLinks)) Then Exit Sub
     For Each link In ActiveWorkbook.LinkSources(xlExcelLinks)
-        If LCase$(Mid$(link, InStrRev(link, "\") + 1)) = LCase$(ThisWorkbook.Name) And link <> ThisWorkbook.FullName Then
+        file = Mid$(link, InStrRev(link, "\\") + 1)
+        If LCase$(file) = LCase$(ThisWorkbook.Name) And link <> ThisWorkbook.FullName Then
             ActiveWorkbook.ChangeLink link, ThisWorkbook.FullName, xlExcelLinks
         End If
     Next link

@@ -152,7 +152,8 @@ class Speller:
                 return meaning or found[0]
             return found[0]
 
-        return _PIECE.sub(piece, formula), calls
+        text = _PIECE.sub(piece, formula)
+        return (_with_blanks(text) if calls and _LEFT_OUT.search(text) else text), calls
 
     def _meaning(self, name: str, on: str | None, place: str, row: int, column: int, inside: str) -> tuple[str, bool]:
         """Return what a name stands for, called by the sheet `on`, and whether it calls ours; or a blank text."""
@@ -179,6 +180,34 @@ class Speller:
             return ""
         ends = sorted((sheets.index(first), sheets.index(last)))
         return ",".join(f"{sheet_prefix(sheet)}{area}" for sheet in self._sheets[ends[0] : ends[1] + 1])
+
+
+_LEFT_OUT = re.compile(r"[(,]\s*[,)]")
+_WORD = re.compile(
+    rf"""(?P<ours>[^\W\d][\w.]*{re.escape(TOLD)}\()|"(?:[^"]|"")*"|'(?:[^']|'')*'|[(){{}},]|\s+|.""", re.DOTALL
+)
+
+
+def _with_blanks(formula: str) -> str:
+    """Return a formula with a blank text for each argument of ours that is left out: the engine would give 0 for it.
+
+    >>> _with_blanks("moment_at.at(0,1,1,A1,,3)+IF(A1,,2)")
+    'moment_at.at(0,1,1,A1,"",3)+IF(A1,,2)'
+    """
+    words: list[str] = []
+    ours: list[bool] = []
+    due = False
+    for found in _WORD.finditer(formula):
+        word = found[0]
+        if word in ",)" and due and ours and ours[-1]:
+            words.append('""')
+        if word in "({" or found["ours"]:
+            ours.append(found["ours"] is not None)
+        elif word in ")}" and ours:
+            ours.pop()
+        due = word == "," or (due and word.isspace())
+        words.append(word)
+    return "".join(words)
 
 
 def plain_reference(table: Table, part: str, row: int) -> str:
