@@ -1,4 +1,4 @@
-"""The command line: `beamfuncs fill` a workbook, `beamfuncs list` the functions.
+"""The command line: `beamfuncs fill` a workbook, `beamfuncs list` the functions, `beamfuncs excel` for those in Excel.
 
 Exit status: 0 done; 1 done, but some cell has an error; 2 nothing done. What only one command needs
 is imported by that command, so that `--help` answers at once.
@@ -14,10 +14,12 @@ from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from dataclasses import asdict
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated, NoReturn
+from typing import TYPE_CHECKING, Annotated, Any, NoReturn
 
 import typer
+from typer.core import TyperGroup
 
+from beamfuncs.status import DONE, DONE_WITH_ERRORS, NOTHING_DONE, give_up
 from beamfuncs.trust import Trust
 
 if TYPE_CHECKING:
@@ -29,7 +31,6 @@ if TYPE_CHECKING:
     from beamfuncs.hosts.headless.stored import Difference
     from beamfuncs.hosts.headless.view import View
 
-DONE, DONE_WITH_ERRORS, NOTHING_DONE = 0, 1, 2
 LISTED = 50
 """How many errors are printed; `--json` gives them all."""
 PATIENCE = 1.0
@@ -46,6 +47,31 @@ app = typer.Typer(
     help="Worksheet functions that solve any line beam exactly: fill workbooks, list the functions.",
     no_args_is_help=True,
     add_completion=False,
+)
+
+
+class _Later(TyperGroup):
+    """The commands of a host, whose module is imported when one of them is named."""
+
+    def list_commands(self, ctx: Any) -> list[str]:
+        return list(_excel().commands)
+
+    def get_command(self, ctx: Any, cmd_name: str) -> Any:
+        return _excel().get_command(ctx, cmd_name)
+
+
+def _excel() -> TyperGroup:
+    from beamfuncs.hosts.excel_addin.commands import app
+
+    return typer.main.get_group(app)
+
+
+app.add_typer(
+    typer.Typer(),
+    name="excel",
+    help="The functions in Excel (Windows): install, check, uninstall.",
+    cls=_Later,
+    no_args_is_help=True,
 )
 
 Trusted = Annotated[
@@ -108,7 +134,7 @@ def fill(
     from beamfuncs.hosts.headless import filling
 
     if in_place and out:
-        _give_up("--in-place and --out exclude each other: the workbook is filled itself, or a copy of it")
+        give_up("--in-place and --out exclude each other: the workbook is filled itself, or a copy of it")
     with _giving_up(), _progress_bar() as progress:
         view = filling.view_of(book, show) if show else None
         report = filling.fill(book, out, progress=progress, in_place=in_place, listing=listing, trust=trust)
@@ -163,7 +189,7 @@ def check(
             if not as_json:
                 _print_checked(one)
     except KeyboardInterrupt:
-        _give_up(f"interrupted after {_count(len(found), 'workbook')}")
+        give_up(f"interrupted after {_count(len(found), 'workbook')}")
     if as_json:
         print(json.dumps([asdict(one) for one in found], indent=2, ensure_ascii=False, default=str))
     if any(one.unread for one in found):
@@ -188,16 +214,11 @@ def list_functions(
         return
     entry = entries.get(name.casefold())
     if entry is None:
-        _give_up(f"no function is called {name}{_near_matches(name.casefold(), list(entries))}")
+        give_up(f"no function is called {name}{_near_matches(name.casefold(), list(entries))}")
     elif as_json:
         print(json.dumps(_as_data(entry), indent=2, ensure_ascii=False))
     else:
         print(f"{entry.call}\n\n{entry.documentation}")
-
-
-def _give_up(reason: str) -> NoReturn:
-    print(f"beamfuncs: {' '.join(reason.split())}", file=sys.stderr)
-    raise typer.Exit(NOTHING_DONE)
 
 
 @contextmanager
@@ -208,9 +229,9 @@ def _giving_up() -> Iterator[None]:
     try:
         yield
     except NotFilled as error:
-        _give_up(str(error))
+        give_up(str(error))
     except KeyboardInterrupt:
-        _give_up("interrupted: nothing was written")
+        give_up("interrupted: nothing was written")
 
 
 def _finish(report: Report, as_json: bool, action: str = "filled") -> NoReturn:

@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from enum import Enum
+from enum import StrEnum
 
 
-class Trust(str, Enum):
+class Trust(StrEnum):
     """Whose value is taken where the stored one of an ordinary cell and the formula engine's differ."""
 
     STORED = "stored"

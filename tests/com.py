@@ -15,7 +15,7 @@ import sys
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager, suppress
 from dataclasses import dataclass, field
-from datetime import datetime, timedelta, timezone, tzinfo
+from datetime import UTC, datetime, timedelta, tzinfo
 from decimal import Decimal
 from types import ModuleType, SimpleNamespace
 from typing import Any, TypeAlias
@@ -82,7 +82,7 @@ def _value(content: Content) -> object:
         return Decimal(round(content.amount * 10_000)) / 10_000
     if isinstance(content, Date):
         day = datetime(1899, 12, 30) + timedelta(days=content.serial)
-        return Moment(*day.timetuple()[:6], tzinfo=timezone.utc)
+        return Moment(*day.timetuple()[:6], tzinfo=UTC)
     return content
 
 
@@ -220,7 +220,7 @@ class ComError(Exception):
 class _Zone(tzinfo):
     """`TimeZoneInfo`, of which only the zone of all cells is asked for."""
 
-    utc = staticmethod(lambda: timezone.utc)
+    utc = staticmethod(lambda: UTC)
 
 
 def _unwrapped(_: object) -> object:

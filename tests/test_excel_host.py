@@ -10,7 +10,7 @@ import math
 import subprocess
 import sys
 from collections.abc import Callable, Iterator
-from datetime import timezone
+from datetime import UTC
 from decimal import Decimal
 from pathlib import Path
 from types import ModuleType, SimpleNamespace
@@ -371,7 +371,7 @@ SCALARS = st.one_of(
     ),
     st.text(max_size=12),
     st.decimals(allow_nan=False, allow_infinity=False, places=4),
-    st.just(com.Moment(2026, 1, 2, tzinfo=timezone.utc)),
+    st.just(com.Moment(2026, 1, 2, tzinfo=UTC)),
     st.builds(object),
 )
 GRIDS = st.tuples(st.integers(1, 3), st.integers(1, 3)).flatmap(

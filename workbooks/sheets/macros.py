@@ -30,7 +30,7 @@ SETTINGS: tuple[tuple[str, str | bool | None, str], ...] = (
     (
         "Add_Workbook_to_PYTHONPATH",
         False,
-        "FALSE: nothing beside the workbook is read; it may lie in any folder.",
+        "FALSE: the workbook may lie in any folder; modules are not looked for beside it.",
     ),
 )
 """What xlwings' VBA is told: the key, its value, and what it does."""

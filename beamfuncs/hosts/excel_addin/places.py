@@ -36,13 +36,18 @@ class Places:
         return self.startup / ADDIN
 
     @property
+    def staged(self) -> Path:
+        """Where the add-in is written before it is moved: Excel opens whatever lies in the startup folder."""
+        return self.startup.parent / f"{ADDIN}.part"
+
+    @property
     def settings(self) -> Path:
         """What the add-in's VBA reads: which Python to start."""
         return self.profile / f".{PROJECT}" / f"{PROJECT}.conf"
 
     @property
     def own(self) -> Path:
-        """The folder that is this program's alone."""
+        """The folder that is this program's alone; it goes when it is empty."""
         return self.local / "beamfuncs"
 
     @property

@@ -60,11 +60,19 @@ End Sub
 
 Private Function Answer(ByVal name As String, ByVal arguments As Variant) As Variant
     On Error GoTo Failed
+    If SettingsComeAlong Then Err.Raise 1000, Description:="The workbook brings settings that could start another" & _
+        " Python: delete its sheet, or the file beside it, called " & PROJECT_NAME & ".conf."
     Answer = WithErrors(XLPy.CallUDF("{SERVED}", name, arguments))
     Exit Function
 Failed:
     lastFailure = Err.Description
     Answer = CVErr(xlErrValue)
+End Function
+
+' Settings that come with a workbook go before the user's own, and say which program is started: they are refused.
+Private Function SettingsComeAlong() As Boolean
+    If Not ThisWorkbook.IsAddin Then Exit Function
+    SettingsComeAlong = SheetExists(ActiveWorkbook, PROJECT_NAME & ".conf") Or FileExists(GetDirectoryConfigFilePath())
 End Function
 
 ' A whole number (vbLong) is the code of an error value: results are never of that type.
