@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from beamfuncs.beam import Beam, Mark
-from beamfuncs.loads import Couple, Curvature, Distributed, Load, Loads, Point, Rotation, Settlement
+from beamfuncs.loads import Couple, Curvature, Distributed, Load, Loads, Point, Rotation, Settlement, Train
 from beamfuncs.stability import mechanism
 
 
@@ -47,10 +47,23 @@ def _statics(beam: Beam) -> str:
 
 def loads_sentence(beam: Beam, loads: Loads) -> str:
     """Return what was understood of the loads on a beam."""
-    words = [f"{load.case}: {_load(beam, load)}" if load.case else _load(beam, load) for load in loads.loads]
+    words = [_named(load.case, _load(beam, load), free=load.part > 0) for load in loads.loads]
+    words += [_named(train.case, _train(train), free=False) for train in loads.trains]
     count = f"{len(words)} load{'s' * (len(words) != 1)}"
     total = sum(load.total for load in loads.loads)
-    return f"{count}: {'; '.join(words)}; in all {total:.12g} downward, before any factors."
+    left_out = ", axles not counted" if loads.trains else ""
+    return f"{count}: {'; '.join(words)}; in all {total:.12g} downward{left_out}, before any factors."
+
+
+def _named(case: str | None, words: str, free: bool) -> str:
+    return f"{f'{case}: ' if case else ''}{words}{' where adverse' if free else ''}"
+
+
+def _train(train: Train) -> str:
+    spaced = f" spaced {_listed(train.spacings)}" if train.spacings else ""
+    ways = ", going both ways" if train.both_ways else ""
+    lane = f", with {train.lane:.12g} along the beam where adverse" if train.lane else ""
+    return f"moving axles {_listed(train.axles)}{spaced}{ways}{lane}"
 
 
 def _load(beam: Beam, load: Load) -> str:

@@ -14,6 +14,9 @@ from beamfuncs.influence import InfluenceLine
 from beamfuncs.loads import Train
 from beamfuncs.stiffness import Array
 
+NOISE = 1e-13
+"""Values below this part of what the axles could do together are rounding, and are zero."""
+
 
 class Position(NamedTuple):
     """The value of a result, where the first axle stands then, and whether the others stand to its left."""
@@ -36,6 +39,7 @@ def _extremes(line: InfluenceLine, offsets: Array, axles: Array) -> tuple[tuple[
     lengths = np.diff(breaks)
     at = np.concatenate([np.zeros((len(lengths), 1)), lengths[:, None], _stationary(cubics, lengths)], axis=1)
     values = _cubic(cubics, at)
+    values[np.abs(values) < NOISE * np.abs(axles).sum() * line.size] = 0.0
     tips = _on_the_tips(line, offsets, axles)
     places = np.concatenate([(breaks[:-1, None] + at).ravel(), tips[0]])
     every = np.concatenate([values.ravel(), tips[1]])
