@@ -16,10 +16,10 @@ import numpy as np
 
 from beamfuncs import anywhere
 from beamfuncs.beam import Beam
-from beamfuncs.fields import Fields, Stretch, evaluate, fields
+from beamfuncs.fields import Fields, fields
 from beamfuncs.influence import Held, InfluenceLine, Section, influence_lines
 from beamfuncs.loads import Combination, Factors, Loads, Train
-from beamfuncs.parts import chosen_factors, pieces, upper_bound
+from beamfuncs.parts import Parts, chosen_factors
 from beamfuncs.stiffness import Array, Solution
 from beamfuncs.trains import Position, extremes
 
@@ -45,6 +45,7 @@ class Adverse:
 
     solution: Solution
     _lines: dict[Section | Held, InfluenceLine] = field(default_factory=dict, compare=False)
+    _parts: dict[tuple[int, float, float], Parts] = field(default_factory=dict, compare=False)
 
     @property
     def beam(self) -> Beam:
@@ -121,35 +122,20 @@ class Adverse:
         columns, trains = self.loads.ranges(combination)
         if self.loads.trains:
             x, side = anywhere.place(self, which, columns, trains, sign, start, end)
-            section = Section(which, x, side)
-            return self.extreme(section, columns, trains, sign)._replace(x=x)
-        best, place, chosen = -np.inf, start, np.zeros(0)
-        for bound, stretch, polynomials in self._by_bound(which, columns, sign, start, end):
-            if bound <= best:
-                break
-            for piece in pieces(polynomials, columns, stretch.length):
-                for s in (piece.start, *piece.stationary, piece.end):
-                    value = evaluate(piece.polynomial, s)
-                    if value > best:
-                        best, place, chosen = value, stretch.x + s, piece.factors
-        return Governing(sign * best + 0.0, tuple(chosen.tolist()), (), place)
+            return self.extreme(Section(which, x, side), columns, trains, sign)._replace(x=x)
+        value, x, chosen = self.along(which, start, end).largest(columns, sign)
+        return Governing(sign * value + 0.0, chosen, (), x)
 
-    def _by_bound(
-        self, which: int, columns: Sequence[Factors], sign: int, start: float, end: float
-    ) -> list[tuple[float, Stretch, Array]]:
-        """Return the stretches with the polynomials of the columns, those that may hold the extreme first."""
-        found = []
-        for stretch, polynomials in self.stretches(which, start, end):
-            towards = sign * polynomials
-            found.append((upper_bound(towards, columns, stretch.length), stretch, towards))
-        return sorted(found, key=lambda one: -one[0])
-
-    def stretches(self, which: int, start: float, end: float) -> Iterator[tuple[Stretch, Array]]:
-        """Yield the stretches between two marks, with the polynomial of a field for each column: a row a power."""
-        n = len(self.loads.columns)
-        for stretch in self._along.within(start, end):
-            rows = [np.broadcast_to(np.asarray(c, float), (n,)) for c in stretch.polynomials[which]]
-            yield stretch, np.array(rows)
+    def along(self, which: int, start: float, end: float) -> Parts:
+        """Return a field of all columns between two marks."""
+        if (which, start, end) not in self._parts:
+            shape = (len(self.loads.columns),)
+            stretches = [
+                (s.x, s.length, np.array([np.broadcast_to(np.asarray(c, float), shape) for c in s.polynomials[which]]))
+                for s in self._along.within(start, end)
+            ]
+            self._parts[which, start, end] = Parts.of(stretches)
+        return self._parts[which, start, end]
 
 
 def _train(line: InfluenceLine, train: Train, factors: Factors, sign: int) -> tuple[float, Position | None]:

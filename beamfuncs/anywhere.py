@@ -24,7 +24,6 @@ from beamfuncs.beam import Beam
 from beamfuncs.fields import DEFLECTION, LEFT, MOMENT, RIGHT, SHEAR, SLOPE, derivative, roots
 from beamfuncs.influence import Section, influence_lines
 from beamfuncs.loads import Factors
-from beamfuncs.parts import pieces
 from beamfuncs.stiffness import Array
 from beamfuncs.trains import shifted
 
@@ -83,12 +82,11 @@ def _along(
 ) -> Iterator[tuple[int, float, float, Array]]:
     """Yield the element, the two ends in it, and the polynomial of the loads that do not move, piece by piece."""
     beam = adverse.beam
-    for stretch, polynomials in adverse.stretches(which, start, end):
-        e = beam.length_at((stretch.x + stretch.end) / 2)
-        left = stretch.x - beam.x[e]
-        for piece in pieces(sign * polynomials, columns, stretch.length):
-            moved = Polynomial(piece.polynomial)(Polynomial([-left, 1.0]))
-            yield e, left + piece.start, left + piece.end, np.asarray(moved.coef, float)
+    for x, length, polynomial in adverse.along(which, start, end).pieces(columns, sign):
+        e = beam.length_at(x + length / 2)
+        left = x - beam.x[e]
+        moved = Polynomial(polynomial)(Polynomial([-left, 1.0]))
+        yield e, left, left + length, np.asarray(moved.coef, float)
 
 
 class _Lines:
@@ -301,14 +299,14 @@ def _searched(
         return sign * adverse.extreme(Section(which, x, side), columns, trains, sign).value
 
     tried: list[tuple[float, float, str, float, float]] = []
-    for stretch, _ in adverse.stretches(which, start, end):
-        inner = stretch.length * (1.0 - np.cos(np.pi * np.arange(1, NODES) / NODES)) / 2
-        places = [(stretch.x, RIGHT), *((stretch.x + s, RIGHT) for s in inner.tolist()), (stretch.end, LEFT)]
-        adverse.prepare([Section(which, x, side) for x, side in places])
-        values = [value(x, side) for x, side in places]
-        for n, ((x, side), found) in enumerate(zip(places, values, strict=True)):
+    for x, length, _ in adverse.along(which, start, end).pieces(columns, sign):
+        inner = length * (1.0 - np.cos(np.pi * np.arange(1, NODES) / NODES)) / 2
+        places = [(x, RIGHT), *((x + s, RIGHT) for s in inner.tolist()), (x + length, LEFT)]
+        adverse.prepare([Section(which, at, side) for at, side in places])
+        values = [value(at, side) for at, side in places]
+        for n, ((at, side), found) in enumerate(zip(places, values, strict=True)):
             neighbours = places[max(n - 1, 0)][0], places[min(n + 1, len(places) - 1)][0]
-            tried.append((found, x, side, *neighbours))
+            tried.append((found, at, side, *neighbours))
     tried.sort(key=lambda one: -one[0])
     best = tried[0][:3]
     for _, _, _, low, high in tried[:3]:

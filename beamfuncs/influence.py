@@ -16,15 +16,12 @@ from itertools import pairwise
 
 import numpy as np
 
-from beamfuncs.beam import Beam
-from beamfuncs.fields import DEFLECTION, LEFT, MOMENT, RIGHT, SHEAR, SLOPE, Polynomial, evaluate, fields, roots
+from beamfuncs.beam import NEAR, Beam
+from beamfuncs.fields import DEFLECTION, LEFT, MOMENT, RIGHT, SHEAR, SLOPE, Polynomial, Stretch, evaluate, fields, roots
 from beamfuncs.loads import Couple, Inner, Kink, Load, Loads, Point, Rotation, Settlement, Slip
 from beamfuncs.stiffness import Array, solve
 
 CAUSES: dict[int, type[Point | Couple | Kink | Slip]] = {SHEAR: Slip, MOMENT: Kink, SLOPE: Couple, DEFLECTION: Point}
-
-JUMP = 1e-9
-"""A line jumps where its two sides differ by more than this part of its largest ordinate."""
 
 
 @dataclass(frozen=True)
@@ -49,39 +46,41 @@ class InfluenceLine:
     """Cubic pieces between `x` and the next, each in the distance from its left end; zero beyond the beam.
 
     `ends` are the ordinates at the right ends of the pieces, `tips` those at the very ends of the beam: a load there is
-    outside a section just inside.
+    outside a section just inside. `cut` is the place where the line of a shear jumps by 1; no other line jumps.
     """
 
     x: tuple[float, ...]
     pieces: tuple[Polynomial, ...]
     ends: tuple[float, ...]
     tips: tuple[float, float]
+    cut: float | None
 
     def value(self, x: float, side: str = RIGHT) -> float:
         """Return the ordinate at a place of the beam, on one side of a jump."""
-        if x >= self.x[-1]:
+        near = NEAR * self.x[-1]
+        if x >= self.x[-1] - near:
             return self.ends[-1]
-        k = max(bisect_right(self.x, x) - 1, 0)
-        if side == LEFT and k > 0 and x == self.x[k]:
+        k = max(bisect_right(self.x, x + near) - 1, 0)
+        if side == LEFT and k > 0 and x <= self.x[k] + near:
             return self.ends[k - 1]
-        return evaluate(self.pieces[k], x - self.x[k]) + 0.0
+        return evaluate(self.pieces[k], max(x - self.x[k], 0.0)) + 0.0
 
     def rows(self, number: int) -> Iterator[tuple[float, float]]:
         """Yield x and ordinate at evenly spaced places and at every break, from left to right, both sides of a jump."""
-        near = 1e-12 * self.x[-1]
+        near = NEAR * self.x[-1]
         breaks = np.array(self.x)
         even = np.linspace(0.0, self.x[-1], number)
         extra = even[np.abs(even[:, None] - breaks).min(axis=1) > near]
         for x in sorted([*self.x, *extra.tolist()]):
-            left, right = self.value(x, LEFT), self.value(x)
-            if x in self.x[1:-1] and abs(left - right) > JUMP * self.size:
-                yield x, left
-            yield x, right
+            if x in self.x[1:-1] and self.cut is not None and abs(x - self.cut) <= near:
+                yield x, self.value(x, LEFT)
+            yield x, self.value(x)
 
     @cached_property
     def size(self) -> float:
-        """The largest ordinate at the breaks."""
-        return max(max(abs(self.value(x, side)) for side in (LEFT, RIGHT)) for x in self.x)
+        """The largest ordinate at the breaks and midway between them."""
+        places = (*self.x, *((a + b) / 2 for a, b in pairwise(self.x)))
+        return max(max(abs(self.value(x, side)) for side in (LEFT, RIGHT)) for x in places)
 
     @cached_property
     def coefficients(self) -> Array:
@@ -118,7 +117,7 @@ def influence_lines(beam: Beam, results: Sequence[Section | Held]) -> list[Influ
     solution = solve(beam, Loads(tuple(loads), causes=tuple(causes)))
     column_of = {part: number for number, (_, part) in enumerate(solution.loads.columns)}
     lines = []
-    for part, sign in enumerate(signs, 1):
+    for part, (sign, result) in enumerate(zip(signs, results, strict=True), 1):
         column = column_of[part]
         factors = [0.0] * len(signs)
         factors[column] = sign
@@ -126,9 +125,17 @@ def influence_lines(beam: Beam, results: Sequence[Section | Held]) -> list[Influ
         ends = solution.combined(factors).ends
         along = fields(replace(solution, pieces=own), ends, factors)
         pieces = tuple(stretch.polynomials[DEFLECTION][:4] for stretch in along.stretches)
-        at_ends = tuple(stretch.ends[DEFLECTION] + 0.0 for stretch in along.stretches)
-        lines.append(InfluenceLine((*along.starts, beam.length), pieces, at_ends, (ends[0][3], ends[-1][7])))
+        at_ends = tuple(_at_end(stretch, result, beam.near) + 0.0 for stretch in along.stretches)
+        cut = result.x if isinstance(result, Section) and result.which == SHEAR else None
+        lines.append(InfluenceLine((*along.starts, beam.length), pieces, at_ends, (ends[0][3], ends[-1][7]), cut))
     return lines
+
+
+def _at_end(stretch: Stretch, result: Section | Held, near: float) -> float:
+    """Return the ordinate at the right end of a piece; where the left side of a cut stands there, before the step."""
+    if isinstance(result, Section) and result.side == LEFT and abs(stretch.end - result.x) <= near:
+        return evaluate(stretch.polynomials[DEFLECTION], stretch.length)
+    return stretch.ends[DEFLECTION]
 
 
 def _inside(beam: Beam, x: float, side: str) -> tuple[int, float]:

@@ -3,14 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
 from functools import lru_cache
 from itertools import pairwise
 from math import comb
 from typing import NamedTuple
 
 import numpy as np
+from numpy.typing import NDArray
 
-from beamfuncs.fields import derivative, roots
+from beamfuncs.fields import derivative, evaluate, roots
 from beamfuncs.loads import Factors
 from beamfuncs.stiffness import Array
 
@@ -25,60 +27,102 @@ def chosen_factors(values: Array, columns: Sequence[Factors], sign: int) -> tupl
     return float(chosen @ values), tuple(chosen.tolist())
 
 
+NOISE = 1e-13
+"""A largest value below this part of what is met along the beam is rounding, and is zero."""
+
+
 class Piece(NamedTuple):
-    """The largest sum of the columns between two places of a stretch: a polynomial, and the factors that make it."""
+    """The largest sum of the columns along a piece from `x` on: a polynomial in the distance from there."""
 
-    start: float
-    end: float
+    x: float
+    length: float
     polynomial: tuple[float, ...]
-    factors: Array
-
-    @property
-    def stationary(self) -> list[float]:
-        """The places inside where the derivative is zero."""
-        return [s for s in roots(derivative(self.polynomial), self.end) if s > self.start]
 
 
-def pieces(polynomials: Array, columns: Sequence[Factors], length: float) -> Iterator[Piece]:
-    """Yield the pieces of the largest sum of factors times polynomials along [0, length].
+@dataclass(frozen=True)
+class Parts:
+    """A field of all columns along a beam, in pieces on which no column changes its sign.
 
-    `polynomials` holds a column for each column of the loads, a row for each power.
+    `polynomials` holds [piece, power, column] in the distance from the `x` of the piece, `positive` which columns are
+    above zero.
     """
-    factors = np.array(columns).reshape(-1, 2)
-    control = bernstein(polynomials, length)
-    positive, negative = (control >= 0.0).all(axis=0), (control <= 0.0).all(axis=0)
-    larger, smaller = factors.max(axis=1), factors.min(axis=1)
-    chosen = np.where(positive, larger, smaller)
-    changing = np.flatnonzero(~positive & ~negative & (larger != smaller))
-    places = {0.0, length}
-    for column in changing:
-        places.update(roots(tuple(polynomials[:, column].tolist()), length))
-    for start, end in pairwise(sorted(places)):
-        powers = ((start + end) / 2) ** np.arange(len(polynomials))
-        of_piece = chosen.copy()
-        of_piece[changing] = np.where(powers @ polynomials[:, changing] > 0.0, larger[changing], smaller[changing])
-        yield Piece(start, end, tuple((polynomials @ of_piece).tolist()), of_piece)
+
+    x: Array
+    lengths: Array
+    polynomials: Array
+    positive: NDArray[np.bool_]
+
+    @classmethod
+    def of(cls, stretches: Sequence[tuple[float, float, Array]]) -> Parts:
+        """Return the parts along stretches, each given by its x, its length, and the polynomials of the columns."""
+        x, lengths, polynomials = [], [], []
+        for start, length, of_columns in stretches:
+            control = _bernstein(of_columns.T, np.array(length)).T
+            places = {0.0, length}
+            for column in np.flatnonzero((control > 0.0).any(axis=0) & (control < 0.0).any(axis=0)):
+                places.update(roots(tuple(of_columns[:, column].tolist()), length))
+            for a, b in pairwise(sorted(places)):
+                x.append(start + a)
+                lengths.append(b - a)
+                polynomials.append(_moved(of_columns, a))
+        every = np.array(polynomials)
+        middles = np.vander(np.array(lengths) / 2, every.shape[1], True)
+        return cls(np.array(x), np.array(lengths), every, np.einsum("kp,kpn->kn", middles, every) > 0.0)
+
+    def pieces(self, columns: Sequence[Factors], sign: int) -> Iterator[Piece]:
+        """Yield the pieces of the largest sum of `sign` times factors times the columns."""
+        _, sums = self._sums(columns, sign)
+        for x, length, polynomial in zip(self.x.tolist(), self.lengths.tolist(), sums.tolist(), strict=True):
+            yield Piece(x, length, tuple(polynomial))
+
+    def largest(self, columns: Sequence[Factors], sign: int) -> tuple[float, float, tuple[float, ...]]:
+        """Return the largest of these sums, its place, and the factors that make it.
+
+        A polynomial is a mean of its Bernstein coefficients, so that the largest of them bounds it.
+        """
+        chosen, sums = self._sums(columns, sign)
+        control = _bernstein(sums, self.lengths[:, None])
+        k = int(
+            np.argmax(np.maximum(control[:, 0], control[:, -1]))
+        )  # the first and the last are the values at the ends
+        at_end = control[k, -1] > control[k, 0]
+        best, place = float(control[k, -1 if at_end else 0]), float(self.x[k] + self.lengths[k] * at_end)
+        bounds = control.max(axis=1)
+        for n in np.argsort(-bounds, kind="stable").tolist():
+            if bounds[n] <= best:
+                break
+            polynomial = tuple(sums[n].tolist())
+            for s in roots(derivative(polynomial), float(self.lengths[n])):
+                value = evaluate(polynomial, s)
+                if value > best:
+                    k, best, place = n, value, float(self.x[n] + s)
+        if abs(best) < NOISE * np.abs(control).max():
+            best = 0.0
+        return best, place, tuple(chosen[k].tolist())
+
+    def _sums(self, columns: Sequence[Factors], sign: int) -> tuple[Array, Array]:
+        """Return for each piece the factors that make `sign` times the sum largest, and that polynomial."""
+        factors = np.array(columns).reshape(-1, 2)
+        chosen = np.where(self.positive == (sign > 0), factors.max(axis=1), factors.min(axis=1))
+        return chosen, sign * np.einsum("kpn,kn->kp", self.polynomials, chosen)
 
 
-def upper_bound(polynomials: Array, columns: Sequence[Factors], length: float) -> float:
-    """Return what the largest sum nowhere exceeds: the same sum of the polynomials' Bernstein coefficients.
-
-    A polynomial is a mean of its coefficients in that form, and the larger of two multiples is convex.
-    """
-    factors = np.array(columns).reshape(-1, 2)
-    control = bernstein(polynomials, length)
-    both = np.maximum(control * factors[:, 0], control * factors[:, 1])
-    return float(both.sum(axis=1).max())
+def _moved(polynomials: Array, by: float) -> Array:
+    """Return polynomials, a row each power, in the distance from `by` (Taylor's series)."""
+    powers = len(polynomials)
+    shift = np.array([[comb(n, k) * by ** (n - k) if k <= n else 0.0 for n in range(powers)] for k in range(powers)])
+    moved: Array = shift @ polynomials
+    return moved
 
 
-def bernstein(polynomials: Array, length: float) -> Array:
-    """Return the coefficients of polynomials in Bernstein's form on [0, length] (S. N. Bernstein 1912)."""
-    scaled = polynomials * (length ** np.arange(len(polynomials)))[:, None]
-    converted: Array = _to_bernstein(len(polynomials) - 1) @ scaled
+def _bernstein(polynomials: Array, lengths: Array) -> Array:
+    """Return the coefficients of polynomials, a row each, in the form of S. N. Bernstein (1912) on [0, length]."""
+    powers = polynomials.shape[1]
+    converted: Array = polynomials * lengths ** np.arange(powers) @ _to_bernstein(powers - 1)
     return converted
 
 
 @lru_cache
 def _to_bernstein(degree: int) -> Array:
     n = degree
-    return np.array([[comb(j, k) / comb(n, k) if k <= j else 0.0 for k in range(n + 1)] for j in range(n + 1)])
+    return np.array([[comb(j, k) / comb(n, k) if k <= j else 0.0 for j in range(n + 1)] for k in range(n + 1)])
