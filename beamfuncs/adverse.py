@@ -39,13 +39,14 @@ class Governing(NamedTuple):
     x: float | None = None
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Adverse:
-    """A solved beam, ready to answer for the extremes of its results."""
+    """A solved beam, ready to answer for the extremes of its results. It is itself alone: its hash is its identity."""
 
     solution: Solution
-    _lines: dict[Section | Held, InfluenceLine] = field(default_factory=dict, compare=False)
-    _parts: dict[tuple[int, float, float], Parts] = field(default_factory=dict, compare=False)
+    _lines: dict[Section | Held, InfluenceLine] = field(default_factory=dict)
+    _positions: dict[tuple[Section | Held, Train], tuple[Position, Position]] = field(default_factory=dict)
+    _parts: dict[tuple[int, float, float], Parts] = field(default_factory=dict)
 
     @property
     def beam(self) -> Beam:
@@ -75,11 +76,20 @@ class Adverse:
         value, chosen = chosen_factors(self._column_values(result), columns, sign)
         positions: list[Position | None] = []
         for train, factors in zip(self.loads.trains, trains, strict=True):
-            line = self.line(result)
-            moved, position = _train(line, train, factors, sign)
-            value += moved + _lane(line, train, factors, sign)
+            if not any(factors):
+                positions.append(None)
+                continue
+            options: list[tuple[float, Position | None]] = [(0.0, None)]
+            options += [(factor * p.value, p) for p in self._extremes(result, train) for factor in factors]
+            moved, position = max(options, key=lambda option: sign * option[0])
+            value += moved + _lane(self.line(result), train, factors, sign)
             positions.append(position)
         return Governing(value + 0.0, chosen, tuple(positions))
+
+    def _extremes(self, result: Section | Held, train: Train) -> tuple[Position, Position]:
+        if (result, train) not in self._positions:
+            self._positions[result, train] = extremes(self.line(result), train)
+        return self._positions[result, train]
 
     def line(self, result: Section | Held) -> InfluenceLine:
         """Return the influence line of a result."""
@@ -136,12 +146,6 @@ class Adverse:
             ]
             self._parts[which, start, end] = Parts.of(stretches)
         return self._parts[which, start, end]
-
-
-def _train(line: InfluenceLine, train: Train, factors: Factors, sign: int) -> tuple[float, Position | None]:
-    options: list[tuple[float, Position | None]] = [(0.0, None)]
-    options += [(factor * p.value, p) for p in extremes(line, train) for factor in factors]
-    return max(options, key=lambda option: sign * option[0])
 
 
 def _lane(line: InfluenceLine, train: Train, factors: Factors, sign: int) -> float:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
+from functools import lru_cache
 from typing import NamedTuple, TypeAlias
 
 from beamfuncs.adverse import HIGHEST, LOWEST, Adverse, Governing
@@ -16,6 +17,8 @@ Combinations: TypeAlias = Sequence[tuple[str, Combination | None]]
 """The texts of combinations, and what they say."""
 
 SIDES = {"highest": HIGHEST, "lowest": LOWEST}
+KEPT = 4_096
+"""How many extremes are kept: `governing` asks again for what `highest` has found."""
 ENVELOPE = (SHEAR, MOMENT, DEFLECTION)
 
 
@@ -48,6 +51,7 @@ def check(beam: Adverse, which: int | None) -> None:
     check_forces(forces_need(beam.beam, imposed))
 
 
+@lru_cache(KEPT)
 def _of_one(beam: Adverse, phrase: Phrase, combination: Combination | None, sign: int) -> Governing:
     if phrase.quantity == TOTAL_LOAD:
         if beam.loads.trains:
@@ -159,4 +163,5 @@ def _trains(beam: Adverse, governing: Governing) -> Iterator[str]:
             yield f"{name}: not on the beam"
         else:
             others = "" if len(train.axles) == 1 else f", the others to its {'left' if position.reversed else 'right'}"
-            yield f"{name}: first axle at x = {position.first_axle:.6g}{others}"
+            off = ", an axle just off the end of the beam" if position.just_off else ""
+            yield f"{name}: first axle at x = {position.first_axle:.6g}{others}{off}"

@@ -16,19 +16,23 @@ from beamfuncs.fields import derivative, evaluate, roots
 from beamfuncs.loads import Factors
 from beamfuncs.stiffness import Array
 
+NOISE = 1e-13
+"""A value below this part of the largest that is met with it is rounding, and is zero."""
+
 
 def chosen_factors(values: Array, columns: Sequence[Factors], sign: int) -> tuple[float, tuple[float, ...]]:
-    """Return the extreme of the sum of factors times values, and the factor of each that makes it."""
+    """Return the extreme of the sum of factors times values, and the factor of each that makes it.
+
+    What does nothing gets the smaller of its factors: it is not among those that govern.
+    """
     if not columns:
         return 0.0, ()
     factors = np.array(columns)
-    which = np.argmax(sign * factors * values[:, None], axis=1)
-    chosen = factors[np.arange(len(columns)), which]
+    rows = np.arange(len(columns))
+    chosen = factors[rows, np.argmax(sign * factors * values[:, None], axis=1)]
+    idle = np.abs(values) <= NOISE * np.abs(values).max()
+    chosen[idle] = factors[rows, np.argmin(np.abs(factors), axis=1)][idle]
     return float(chosen @ values), tuple(chosen.tolist())
-
-
-NOISE = 1e-13
-"""A largest value below this part of what is met along the beam is rounding, and is zero."""
 
 
 class Piece(NamedTuple):

@@ -9,7 +9,9 @@ from __future__ import annotations
 from typing import NamedTuple
 
 import numpy as np
+from numpy.typing import NDArray
 
+from beamfuncs.beam import NEAR
 from beamfuncs.influence import InfluenceLine
 from beamfuncs.loads import Train
 from beamfuncs.stiffness import Array
@@ -19,49 +21,65 @@ NOISE = 1e-13
 
 
 class Position(NamedTuple):
-    """The value of a result, where the first axle stands then, and whether the others stand to its left."""
+    """The value of a result, where the first axle stands then, and whether the others stand to its left.
+
+    `just_off` tells that an axle stands on an end of the beam and counts as just beyond it.
+    """
 
     value: float
     first_axle: float
+    just_off: bool
     reversed: bool
 
 
 def extremes(line: InfluenceLine, train: Train) -> tuple[Position, Position]:
     """Return the positions of the largest and the smallest value; of equal ones the first."""
-    found = [_extremes(line, np.array(offsets), np.array(train.axles)) for offsets in train.offsets]
-    highest = [Position(*high, reversed=way > 0) for way, (high, _) in enumerate(found)]
-    lowest = [Position(*low, reversed=way > 0) for way, (_, low) in enumerate(found)]
-    return max(highest, key=lambda p: p.value), min(lowest, key=lambda p: p.value)
+    found: list[Position] = []
+    for way, offsets in enumerate(train.offsets):
+        found += _positions(line, np.array(offsets), np.array(train.axles), way > 0)
+    return max(found, key=lambda p: p.value), min(found, key=lambda p: p.value)
 
 
-def _extremes(line: InfluenceLine, offsets: Array, axles: Array) -> tuple[tuple[float, float], tuple[float, float]]:
-    breaks, cubics = sums(line, offsets, axles)
+def _positions(line: InfluenceLine, offsets: Array, axles: Array, reversed_: bool) -> tuple[Position, Position]:
+    """Return the positions of the largest and the smallest value with the axles at these offsets from the first."""
+    breaks, cubics, outside = sums(line, offsets, axles)
     lengths = np.diff(breaks)
     at = np.concatenate([np.zeros((len(lengths), 1)), lengths[:, None], _stationary(cubics, lengths)], axis=1)
     values = _cubic(cubics, at)
     values[np.abs(values) < NOISE * np.abs(axles).sum() * line.size] = 0.0
-    tips = _on_the_tips(line, offsets, axles)
-    places = np.concatenate([(breaks[:-1, None] + at).ravel(), tips[0]])
-    every = np.concatenate([values.ravel(), tips[1]])
-    order = np.argsort(places, kind="stable")
-    places, every = places[order], every[order]
-    high, low = int(np.argmax(every)), int(np.argmin(every))
-    return (float(every[high]), float(places[high])), (float(every[low]), float(places[low]))
+    places = breaks[:-1, None] + at
+    stands = places[:, :, None] + offsets
+    near = NEAR * line.x[-1]
+    on_tip = (np.abs(stands) <= near) | (np.abs(stands - line.x[-1]) <= near)
+    just_off = (on_tip & outside[:, None, :]).any(axis=2)
+    tip_places, tip_values = _on_the_tips(line, offsets, axles)
+    every = np.concatenate([values.ravel(), tip_values])
+    where = np.concatenate([places.ravel(), tip_places])
+    off = np.concatenate([just_off.ravel(), np.zeros(len(tip_places), bool)])
+    order = np.lexsort((off, where))
+    every, where, off = every[order], where[order], off[order]
+    high, low = (
+        Position(float(every[k]), float(where[k]), bool(off[k]), reversed_)
+        for k in (int(np.argmax(every)), int(np.argmin(every)))
+    )
+    return high, low
 
 
-def sums(line: InfluenceLine, offsets: Array, axles: Array) -> tuple[Array, Array]:
-    """Return the positions of the first axle at which an axle crosses a break, and the cubic between each two of them.
+def sums(line: InfluenceLine, offsets: Array, axles: Array) -> tuple[Array, Array, NDArray[np.bool_]]:
+    """Return the positions of the first axle at which an axle crosses a break, the cubic between each two of them, and
+    which axles are beyond the beam there.
 
     The cubics count from the left one of the two.
     """
     x = np.array(line.x)
     breaks = np.unique(x[:, None] - offsets)
-    breaks = breaks[np.concatenate([[True], np.diff(breaks) > 1e-12 * x[-1]])]
+    breaks = breaks[np.concatenate([[True], np.diff(breaks) > NEAR * x[-1]])]
     middles = (breaks[:-1] + breaks[1:]) / 2
     piece = np.searchsorted(x, middles[:, None] + offsets)  # 0 before the beam, len(x) beyond it
     starts = np.concatenate([[0.0], x])[piece]
     cubics = axles[:, None] * line.coefficients[piece]
-    return breaks, shifted(cubics, breaks[:-1, None] + offsets - starts).sum(axis=1)
+    outside = (piece == 0) | (piece == len(x))
+    return breaks, shifted(cubics, breaks[:-1, None] + offsets - starts).sum(axis=1), outside
 
 
 def shifted(cubics: Array, by: Array) -> Array:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import subprocess
 import sys
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import replace
 from itertools import pairwise
 from math import ceil, sqrt
@@ -88,11 +88,15 @@ def schedule(filled: tuple[Report, Workbook]) -> Schedule:
     return Schedule(filled[1])
 
 
-def refilled(source: Path, target: Path, change: Change | None = None) -> tuple[Report, Workbook]:
-    """Fill a workbook, after a change of its cells where one is given."""
+def refilled(
+    source: Path, target: Path, change: Change | None = None, leave: Sequence[str] = ("Actions",)
+) -> tuple[Report, Workbook]:
+    """Fill a workbook; where a change of its cells is given, after it, and without the sheets it cannot reach."""
     if change:
         book = load_workbook(source)
         change(book)
+        for name in leave:
+            del book[name]
         source = target.with_name(f"changed_{target.name}")
         book.save(source)
     report = fill(source, target)
@@ -135,6 +139,16 @@ def test_the_committed_workbook_is_what_the_script_builds(built: Path) -> None:
 
 def _content(value: Any) -> Any:
     return (value.ref, value.text) if isinstance(value, ArrayFormula) else value
+
+
+def test_the_sheet_of_design_actions_stands_by_itself(built: Path) -> None:
+    """No formula of it reads another sheet, and none of another sheet reads it."""
+    for sheet in load_workbook(built):
+        contents = [cell.value for row in sheet.iter_rows() for cell in row]
+        formulas = [str(one.text if isinstance(one, ArrayFormula) else one) for one in contents]
+        if sheet.title == "Actions":
+            assert not [formula for formula in formulas if formula.startswith("=") and "!" in formula]
+        assert not [formula for formula in formulas if "Actions!" in formula or "'Actions'" in formula]
 
 
 def test_the_script_builds_the_same_workbook_twice(built: Path, tmp_path: Path) -> None:

@@ -12,8 +12,8 @@ from datetime import date
 from pathlib import Path
 
 from openpyxl import Workbook
-from sheets import foundations, in_depth, macros, notes, paper, schedule, understood
-from sheets.design import Design, LaidOut, Member, Pad
+from sheets import actions, foundations, in_depth, macros, notes, paper, schedule, understood
+from sheets.design import Crossed, Design, LaidOut, Member, Pad
 from sheets.paper import TitleBlock
 from sheets.writing import write
 
@@ -271,6 +271,26 @@ RUNWAY = LaidOut(
     ("P6", "P7", "P8", "P9"),
 )
 
+# The beam that the boat trolley crosses -------------------------------------------------------------
+
+TROLLEY = Crossed(
+    "B20",
+    "Trolley beam along the quay wall; three unequal spans, overhang over the slipway, crossed by the boat trolley",
+    (6.5, 8.0, 5.5, 1.8),
+    210,
+    48_000,
+    6.5,
+    9.0,
+    (60, 60, 45),
+    (1.6, 3.4),
+    (("G", "permanent"), ("Q", "storage"), ("T", "variable", 0.7, 0.5, 0.3)),
+    "EN 1990 6.10",
+    "EN 1990 characteristic",
+    "moment at support 2",
+    "The recommended factors of the standard stand until others are typed. National annexes and local codes decide on "
+    "them, on combinations for equilibrium, and on the trolley's loads. Verify independently.",
+)
+
 # The pads: mark, bearing pressure allowed [kN/m²], depth [m] --------------------------------------
 
 PADS = (
@@ -352,6 +372,11 @@ NOTATION = (
         "udl, varying, point, couple, settle (a support), rotate (a support), curvature (imposed, by "
         "warming for example)",
     ),
+    (
+        "Where adverse",
+        "Q: udl 9 each span: on each span by itself; T: axles 60 60 45 spaced 1.6 3.4: a train that moves along the "
+        "beam; highest, lowest and governing answer for them",
+    ),
     ("Combination", "1.35 G + 1.5 Q + S + T; a case that is not named counts 0"),
     ("Stiffness", "EI = E [GPa] × I [cm⁴] / 100 in kNm²; one number, or one a length"),
     (
@@ -370,7 +395,7 @@ BASIS = (
     (
         "Combinations",
         "strength and characteristic stand once, on sheet Schedule, where the factors read from them are "
-        "shown; G, Q, S and T apart on sheet Foundations",
+        "shown; G, Q, S and T apart on sheet Foundations; on sheet Actions those that a standard makes of the actions",
     ),
 )
 CAUTIONS = (
@@ -378,13 +403,16 @@ CAUTIONS = (
     ("Decide", "local codes and a licensed engineer decide; factors, limits and pressures are examples"),
     ("Settlement, warming", "may relieve as well as load: highest and lowest are given with and without S and T"),
     ("Theory", "linear elastic material, small deflections, plane sections, bending only"),
-    ("Variable load", "acts on all spans at once; look for the least favourable pattern of loaded spans"),
+    (
+        "Variable load",
+        "acts on all spans at once, except on sheet Actions; look for the least favourable pattern",
+    ),
     ("Error values", "a function that cannot answer shows an error value, never a guess; the fault column says why"),
 )
 LEFT_OUT = (
     ("Forces", "axial force, torsion, biaxial bending, horizontal loads"),
     ("Stability", "buckling of any kind, lateral torsional, local or of the member"),
-    ("Time, motion", "creep, shrinkage, cracking, fatigue, vibration, impact, moving loads"),
+    ("Time, motion", "creep, shrinkage, cracking, fatigue, vibration, impact; moving loads except on sheet Actions"),
     ("Resistance", "strength of sections, connections, bearings and ground; punching, reinforcement of the pads"),
     ("Self weight", "counted only where it is entered in G"),
     ("Uplift", "the lowest loads of the pads take the load of all spans at once; check what must be held down"),
@@ -392,6 +420,7 @@ LEFT_OUT = (
 SURVEYOR = (
     ("Pads", "sheet Foundations, table of sizes: side, depth and concrete of each pad"),
     ("By hand", "a pad marked “moment: design by hand” has no size yet, and is in no sum"),
+    ("Quay wall", "beam B20 bears on the quay wall and on no pad: its reactions by case are on sheet Actions"),
     ("Changes", "when a span or a load changes, so do the pads: note the revision that was measured"),
 )
 NOTES = (
@@ -408,9 +437,10 @@ NOTES = (
 )
 
 DESIGN = Design(
-    TitleBlock("Kestrel Quay boat store", "KQ-BS", "P2", date(2026, 11, 16), 5),
+    TitleBlock("Kestrel Quay boat store", "KQ-BS", "P2", date(2026, 11, 16), 6),
     MEMBERS,
     RUNWAY,
+    TROLLEY,
     PADS,
     "1.35 G + 1.5 Q + S + T",
     "G + Q + S + T",
@@ -420,7 +450,7 @@ DESIGN = Design(
     NOTES,
 )
 
-SHEETS = (schedule, understood, in_depth, foundations, notes)
+SHEETS = (schedule, understood, in_depth, actions, foundations, notes)
 
 
 def build() -> Workbook:

@@ -42,6 +42,30 @@ class LaidOut:
 
 
 @dataclass(frozen=True)
+class Crossed:
+    """A continuous beam with an overhang, its last length, that a train of axles crosses.
+
+    `actions` holds for each case what it is, and its own psi factors where it has them; `strength` and `service` are
+    the combinations that a standard makes of them; `influence` is the result whose influence line is shown.
+    """
+
+    mark: str
+    where: str
+    lengths: tuple[float, float, float, float]
+    modulus: float
+    inertia: float
+    permanent: float
+    variable: float
+    axles: tuple[float, float, float]
+    spacings: tuple[float, float]
+    actions: tuple[tuple[str | float, ...], ...]
+    strength: str
+    service: str
+    influence: str
+    note: str
+
+
+@dataclass(frozen=True)
 class Pad:
     """A foundation: its mark, the bearing pressure allowed [kN/m²] and its depth [m]."""
 
@@ -61,6 +85,7 @@ class Design:
     issue: TitleBlock
     members: tuple[Member, ...]
     laid_out: LaidOut
+    crossed: Crossed
     pads: tuple[Pad, ...]
     strength: str
     characteristic: str

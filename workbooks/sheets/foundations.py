@@ -60,7 +60,7 @@ def draw(sheet: Worksheet, design: Design) -> None:
     """Draw the bearings, the pads and the proof."""
     design.issue.draw(
         sheet,
-        4,
+        5,
         NAME,
         "Reactions of every bearing, summed by support mark. Values by case are characteristic.",
         left="A:L",

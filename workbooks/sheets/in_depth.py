@@ -4,18 +4,12 @@ from __future__ import annotations
 
 from dataclasses import replace
 
-from openpyxl.chart import Reference, ScatterChart, Series
-from openpyxl.chart.axis import ChartLines
-from openpyxl.chart.shapes import GraphicalProperties
-from openpyxl.chart.text import RichText, Text
-from openpyxl.chart.title import Title
-from openpyxl.drawing.line import LineProperties
-from openpyxl.drawing.text import CharacterProperties, Paragraph, RegularTextRun
 from openpyxl.utils import get_column_letter
 from openpyxl.worksheet.worksheet import Worksheet
 
-from sheets import paper, schedule
+from sheets import charts, paper, schedule
 from sheets.called import Called
+from sheets.charts import Line, Place
 from sheets.design import Design, LaidOut
 
 NAME = "Runway"
@@ -58,9 +52,9 @@ STATIONS = 38
 SHEAR, MOMENT, DEFLECTION = "BCD"
 """The columns of the stations that are drawn."""
 CHARTS = (
-    (("G38", 34.6, 6.4), "Shear [kN], strength, against x [m]", SHEAR, paper.HARBOUR),
-    (("G51", 34.6, 6.4), "Moment [kNm], strength, sagging downward, against x [m]", MOMENT, paper.HARBOUR),
-    (("L23", 20, 8.2), "Deflection [mm], characteristic, against x [m]", DEFLECTION, paper.ALARM),
+    (Place("G38", 34.6, 6.4), "Shear [kN], strength, against x [m]", SHEAR, paper.HARBOUR),
+    (Place("G51", 34.6, 6.4), "Moment [kNm], strength, sagging downward, against x [m]", MOMENT, paper.HARBOUR),
+    (Place("L23", 20, 8.2), "Deflection [mm], characteristic, against x [m]", DEFLECTION, paper.ALARM),
 )
 
 STRENGTH, CHARACTERISTIC = (schedule.combination(kind) for kind in schedule.COMBINATIONS)
@@ -102,7 +96,8 @@ def draw(sheet: Worksheet, design: Design) -> None:
     _phrases(sheet, called)
     _stations(sheet, called)
     for place, title, column, ink in CHARTS:
-        _diagram(sheet, place, title, column, ink)
+        lines = (Line(column, title, ink),)
+        charts.along(sheet, place, title, "A", (STATION, last), lines, upward=column == SHEAR)
     sheet.freeze_panes = "A5"
     paper.page(sheet, f"A1:R{last}", design.issue.footer)
 
@@ -239,35 +234,3 @@ def _stations(sheet: Worksheet, called: Called) -> None:
         deflection = called.ask("deflection_at", CHARACTERISTIC, f"$A{row}").removeprefix("=")
         sheet[f"D{row}"] = f"=1000*{deflection}"
     paper.fade_when(sheet, f"A{STATION}:D{last}", f"ROW()-{STATION - 1}>$E$25")
-
-
-def _diagram(sheet: Worksheet, place: tuple[str, float, float], title: str, column: str, ink: str) -> None:
-    """Draw one column of the stations against x; moments and deflections downward, shears upward."""
-    number = ord(column) - ord("A") + 1
-    y, x = (Reference(sheet, each, STATION, each, STATION + STATIONS - 1) for each in (number, 1))
-    series = Series(y, x, title=title)
-    series.marker.symbol = "none"
-    series.smooth = False
-    series.graphicalProperties.line.solidFill = ink
-    series.graphicalProperties.line.width = 22_000
-    chart = ScatterChart(scatterStyle="lineMarker")
-    chart.series.append(series)
-    chart.legend = None
-    chart.title = _heading(title)
-    if column != SHEAR:
-        chart.y_axis.scaling.orientation = "maxMin"
-    chart.x_axis.delete = chart.y_axis.delete = False
-    chart.x_axis.tickLblPos = "low" if column == SHEAR else "high"
-    chart.roundedCorners = False
-    for axis in (chart.x_axis, chart.y_axis):
-        axis.majorGridlines = ChartLines(GraphicalProperties(ln=LineProperties(solidFill=paper.PALE)))
-    chart.x_axis.number_format = chart.y_axis.number_format = "0"
-    anchor, chart.width, chart.height = place  # type: ignore[assignment]
-    sheet.add_chart(chart, anchor)
-
-
-def _heading(text: str) -> Title:
-    """Return the title of a chart in the size of the sheet's own headings."""
-    look = CharacterProperties(sz=1000, b=True, solidFill=paper.INK)
-    run = RegularTextRun(rPr=look, t=text)
-    return Title(tx=Text(rich=RichText(p=[Paragraph(r=[run])])), overlay=False)

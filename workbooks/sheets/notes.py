@@ -19,7 +19,7 @@ def draw(sheet: Worksheet, design: Design) -> None:
     """Draw the notes in two columns."""
     design.issue.draw(
         sheet,
-        5,
+        6,
         NAME,
         "Signs, notation, basis and cautions of this workbook.",
         left="A:B",
