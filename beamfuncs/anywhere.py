@@ -193,7 +193,7 @@ def _largest(cells: Sequence[Cell]) -> tuple[Cell, tuple[float, float]]:
         open_ = bounds > best + CLOSE * scale
         if open_.sum() > MOST_TRIANGLES:
             break
-        triangles, of_cell = _halved(triangles[open_], table[of_cell[open_]], of_cell[open_])
+        triangles, of_cell = _halved(triangles[open_], of_cell[open_])
     return cells[found], point
 
 
@@ -251,15 +251,13 @@ def _values(polynomials: Array, nodes: Array) -> Array:
     return total
 
 
-def _halved(triangles: Array, polynomials: Array, of_cell: Array) -> tuple[Array, Array]:
-    """Cut each triangle through the middle of the edge along which its polynomial is the least straight."""
+def _halved(triangles: Array, of_cell: Array) -> tuple[Array, Array]:
+    """Cut each triangle through the middle of its longest edge, so that none stays long however often it is cut."""
     others = np.roll(triangles, -1, axis=1)
-    middles = (triangles + others) / 2
-    at, at_other, at_middle = (_values(polynomials, points) for points in (triangles, others, middles))
-    edge = np.argmax(np.abs(at + at_other - 2 * at_middle), axis=1)
+    edge = np.argmax(((others - triangles) ** 2).sum(axis=2), axis=1)
     rows = np.arange(len(triangles))
     a, b, c = (triangles[rows, (edge + n) % 3] for n in range(3))
-    middle = middles[rows, edge]
+    middle = (a + b) / 2
     halves = np.concatenate([np.stack([a, middle, c], axis=1), np.stack([middle, b, c], axis=1)])
     return halves, np.concatenate([of_cell, of_cell])
 

@@ -688,9 +688,10 @@ def fault(beam: Argument, loads: Argument, stiffness: Argument = None, combinati
     "loads, clause 1: 'from 2 to 12' ends beyond the beam (length 8)"
     """
     try:
-        line = read_line(frozen("beam", beam))
+        line = read_beam(frozen("beam", beam), frozen("stiffness", stiffness))
+        free = read_loads(frozen("loads", loads), line).free
         factors = read_combination(frozen("combination", combination))
-        if read_loads(frozen("loads", loads), line).free or has_two_factors(factors):
+        if free or has_two_factors(factors):
             result = adverse(beam, loads, stiffness)
             result.loads.ranges(factors)
             check(result, None)

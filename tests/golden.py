@@ -152,6 +152,13 @@ PHRASES: Argument = [
 ]
 HOLED_PHRASES: Argument = [["moment max"], ["reaction 9"], ["bending at 3"], [None], ["shear at support 2 left"]]
 
+FREE_BEAM = "pinned 6.1 roller 4.7 roller 1.9 free"
+PATTERNS = "G: udl 4; Q: udl 10 each span; Q: point 30 at 2.2 each load"
+TRAIN = "T: axles 80 80 40 spaced 1.2 3.2 both ways"
+FREE_PHRASES: Argument = [["reaction 2", "moment at 3"], ["shear at support 2 left", "deflection at 1 in span 2"]]
+PLACES_ON_FREE: Argument = [[0.0], [2.2], [12.7]]
+ACTIONS: Argument = [["G", "permanent"], ["Q", "office"], ["W", "wind"]]
+
 GOLDEN: tuple[Row, ...] = (
     # reactions
     call("reaction", PROPPED, "udl 12", 1.0),
@@ -271,6 +278,50 @@ GOLDEN: tuple[Row, ...] = (
     call("contraflexure", THREE, THREE_LOADS, THREE_EI),
     call("contraflexure", PROPPED, "Q: udl 12", None, "1.5 Q"),
     call("contraflexure", "pinned 8 roller", "udl 12"),
+    # over combinations, patterns and moving loads
+    call("combinations", "EN 1990 6.10", "G permanent; Q office; W wind"),
+    call("combinations", "EN 1990 6.10", ACTIONS, "W"),
+    call("combinations", "EN 1990 6.10b", ACTIONS, None, "xi 0.9"),
+    call("combinations", "ASCE 7-22 allowable", "D dead; L live"),
+    call("combinations", "EN 1990 6.10", "G permanent; Q office", "S"),
+    call("combinations", "no standard", "G permanent"),
+    call("highest", FREE_BEAM, PATTERNS, "moment max", "1.35/1.0 G + 1.5 Q", 24000.0),
+    call("highest", FREE_BEAM, PATTERNS, FREE_PHRASES, [["1.35 G"], [None], ["1.35 G + 1.5 Q"]], "EI 24000; GA 5e5"),
+    call("highest", FREE_BEAM, PATTERNS, "reaction 1"),
+    call("highest", FREE_BEAM, PATTERNS, "reaction 1", "1.5 Q"),
+    call("highest", FREE_BEAM, PATTERNS, "deflection max", None, 24000.0),
+    call("highest", FREE_BEAM, TRAIN, FREE_PHRASES, None, 24000.0),
+    call("highest", FREE_BEAM, PATTERNS, "moment min"),
+    call("highest", FREE_BEAM, PATTERNS, "deflection max"),
+    call("lowest", FREE_BEAM, PATTERNS, "moment min", "1.35/1.0 G + 1.5 Q", 24000.0),
+    call("lowest", FREE_BEAM, TRAIN, FREE_PHRASES, "1.35 T", 24000.0),
+    call("lowest", FREE_BEAM, TRAIN, "reaction 1"),
+    call("lowest", FREE_BEAM, TRAIN, "reaction 1", None, 24000.0),
+    call("lowest", FREE_BEAM, TRAIN, "reaction 9"),
+    call("governing", FREE_BEAM, PATTERNS, "moment max", "1.35/1.0 G + 1.5 Q", 24000.0, "highest"),
+    call("governing", FREE_BEAM, TRAIN, "reaction 1", None, None, "lowest"),
+    call("governing", FREE_BEAM, TRAIN, "reaction 1", "1.5 T", None, "lowest"),
+    call("governing", FREE_BEAM, TRAIN, "moment max", None, 24000.0),
+    call("governing", FREE_BEAM, PATTERNS, "reaction 1"),
+    call("governing", FREE_BEAM, PATTERNS, "reaction 1", "1.5 Q"),
+    call("governing", FREE_BEAM, PATTERNS, "reaction 1", "1.5 Q", None, "most"),
+    call("envelope", FREE_BEAM, PATTERNS),
+    call("envelope", FREE_BEAM, PATTERNS, [["1.35 G"], ["1.35 G + 1.5 Q"]], 5.0, 24000.0),
+    call("envelope", FREE_BEAM, PATTERNS, "1.5 Q"),
+    call("envelope", FREE_BEAM, PATTERNS, None, 5.0),
+    call("envelope", FREE_BEAM, TRAIN, "1.5 T", None, 24000.0),
+    call("envelope", FREE_BEAM, PATTERNS, "1.35 G +"),
+    call("reaction_cases", FREE_BEAM, PATTERNS),
+    call("reaction_cases", "fixed 8.1 pinned", TRAIN, 24000.0),
+    call("reaction_cases", FREE_BEAM, "axles 80 80 spaced"),
+    call("influence", FREE_BEAM, "moment at 3", 2.2),
+    call("influence", FREE_BEAM, "deflection at 3", PLACES_ON_FREE, 24000.0),
+    call("influence", FREE_BEAM, "shear at support 2 left", 20.0),
+    call("influence_line", FREE_BEAM, "shear at 3"),
+    call("influence_line", FREE_BEAM, "reaction 2", 5.0),
+    call("influence_line", FREE_BEAM, "reaction moment 1", None, 24000.0),
+    call("influence_line", FREE_BEAM, "slope at 3", 5.0, 24000.0),
+    call("influence_line", FREE_BEAM, "moment max"),
     # text
     call("beam_line", "fix", 6.5, "pin"),
     call("beam_line", "fix", 6.5, "pin", 2.75, "hinge 1.25 roller"),

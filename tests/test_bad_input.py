@@ -455,9 +455,9 @@ def outcome(function: Any, arguments: list[Any]) -> object:
 
 
 def answers(result: object) -> bool:
-    """Tell whether a result is a finite number, text, or rows of numbers and errors."""
+    """Tell whether a result is a finite number, text, or rows of numbers, texts and errors."""
     if isinstance(result, list):
-        return all(isinstance(e, BeamError) or (type(e) is float and math.isfinite(e)) for row in result for e in row)
+        return all(isinstance(entry, BeamError) or answers(entry) for row in result for entry in row)
     return isinstance(result, str) or (type(result) is float and math.isfinite(result))
 
 

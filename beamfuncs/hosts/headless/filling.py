@@ -18,6 +18,7 @@ from beamfuncs.hosts.headless.bounds import why_refused
 from beamfuncs.hosts.headless.calls import Calls
 from beamfuncs.hosts.headless.conditional import CRITERION, guarded
 from beamfuncs.hosts.headless.engine import (
+    CIRCULAR,
     FITTED,
     NO_ROOM,
     Call,
@@ -26,7 +27,7 @@ from beamfuncs.hosts.headless.engine import (
     Function,
     unknown_functions,
 )
-from beamfuncs.hosts.headless.formulas import TOLD, Speller, called
+from beamfuncs.hosts.headless.formulas import TOLD, Speller, called, with_positions
 from beamfuncs.hosts.headless.freezing import frozen
 from beamfuncs.hosts.headless.grid import Area, Place, cell_name
 from beamfuncs.hosts.headless.layout import MOST_FORMULAS, MOST_IN_ARRAYS, Cell, Layout, SheetError, read
@@ -260,6 +261,7 @@ class Filling:
         self._refuse_what_is_hidden()
         self._keep_to_one_cell()
         self._keep_arrays_within_bounds()
+        self._let_circular_arrays_fail_as_a_whole()
         self.comparison = Comparison(
             engine=self.engine,
             nodes=self._cells,
@@ -338,6 +340,8 @@ class Filling:
             if calls or (number, cell.shared) in sharing_calls:
                 self.beam_cells.add(place)
             text = guarded(text, f"{CRITERION}{TOLD}({told},")
+            if cell.extent:
+                text = with_positions(text)
             if cell.extent and not cell.dynamic:
                 text = f"{FITTED}{TOLD}({text},{len(cell.extent.rows)},{len(cell.extent.columns)})"
             length += len(text)
@@ -398,6 +402,20 @@ class Filling:
                     self.engine.refuse(place)
                     self._refused[place] = _TOO_MANY
         if self._refused != refused:
+            self._evaluate_again()
+
+    def _let_circular_arrays_fail_as_a_whole(self) -> None:
+        """Put the error of an array in a circle into all its cells: the engine leaves all but the first blank."""
+        circular = {
+            place: cell.extent
+            for place, cell in self._cells.items()
+            if cell.extent and not cell.dynamic and self.engine.value(place) == CIRCULAR
+        }
+        for place in circular:
+            self._refused[place] = self._reasons.of(place, place, CIRCULAR)
+        for place, extent in circular.items():
+            self.engine.set_array(place, [[ErrorValue(VALUE) for _ in extent.columns] for _ in extent.rows])
+        if circular:
             self._evaluate_again()
 
     def _spills(self, place: Place) -> bool:

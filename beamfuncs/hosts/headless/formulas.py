@@ -17,7 +17,7 @@ from dataclasses import dataclass
 
 from beamfuncs.errors import VALUE
 from beamfuncs.hosts.headless.bounds import why_refused
-from beamfuncs.hosts.headless.grid import Area, column_name, sheet_prefix
+from beamfuncs.hosts.headless.grid import Area, column_name, column_number, sheet_prefix
 from beamfuncs.hosts.headless.names import LONGEST_MEANING, Names
 
 REF, NAME = "#REF!", "#NAME?"
@@ -208,6 +208,34 @@ def _with_blanks(formula: str) -> str:
         due = word == "," or (due and word.isspace())
         words.append(word)
     return "".join(words)
+
+
+_POSITION = re.compile(rf'"(?:[^"]|"")*"|\b(?P<what>ROW|COLUMN)\(\s*(?P<area>{_AREA})\s*\)', re.IGNORECASE)
+MOST_POSITIONS = 10_000
+
+
+def with_positions(formula: str) -> str:
+    """Return the formula of an array with the rows or columns that it asks for written out.
+
+    To the engine an area that is only asked for its place is one whose values count: `ROW(1:9)` in row 1 is a circle.
+
+    >>> with_positions('ROW($A$2:B4)*2&"ROW(1:2)"'), with_positions("COLUMN(B:C)")
+    ('{2;3;4}*2&"ROW(1:2)"', '{2,3}')
+    """
+
+    def written(found: re.Match[str]) -> str:
+        if not found["what"]:
+            return found[0]
+        by_rows = found["what"].upper() == "ROW"
+        ends = re.findall(r"[0-9]+" if by_rows else "[A-Z]+", found["area"].upper())
+        if not ends:
+            return found[0]
+        first, last = sorted(int(end) if by_rows else column_number(end) for end in (ends[0], ends[-1]))
+        if last - first >= MOST_POSITIONS:
+            return found[0]
+        return "{" + (";" if by_rows else ",").join(map(str, range(first, last + 1))) + "}"
+
+    return _POSITION.sub(written, formula)
 
 
 def plain_reference(table: Table, part: str, row: int) -> str:
