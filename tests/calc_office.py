@@ -33,7 +33,13 @@ class CalcOffice:
     """A running office; every method of the driver is one of its methods."""
 
     def __init__(self, office: offices.Office, profile: Path, folder: Path) -> None:
-        command = [str(office.python), str(DRIVER), str(office.soffice), str(profile), str(Path(remote.__file__).parent)]
+        command = [
+            str(office.python),
+            str(DRIVER),
+            str(office.soffice),
+            str(profile),
+            str(Path(remote.__file__).parent),
+        ]
         environment = {**os.environ, FOLDER: str(folder)}
         pipe = subprocess.PIPE
         self.process = subprocess.Popen(command, stdin=pipe, stdout=pipe, text=True, env=environment)

@@ -1,6 +1,6 @@
 """A script for the Python that knows the office: starts one without a window and does what lines of JSON ask of it.
 
-    python office_driver.py SOFFICE PROFILE FOLDER_OF_REMOTE
+python office_driver.py SOFFICE PROFILE FOLDER_OF_REMOTE
 """
 
 from __future__ import annotations
@@ -13,7 +13,6 @@ from typing import Any
 
 NUMBER, TEXT, ERROR = 1, 2, 4
 """What a formula gives, in the office's numbers."""
-OURS = "beamfuncs.calc.Functions"
 
 
 class Driver:
@@ -69,8 +68,10 @@ class Driver:
     def read(self, book: int, place: str, sheet: str | int = 0) -> list[list[Any]]:
         """What the cells of a range show: numbers, texts, null for blank, `[code, shown]` for an error."""
         cells = self._range(book, sheet, place)
-        height, width = cells.Rows.Count, cells.Columns.Count
-        return [[self._shown(cells.getCellByPosition(j, i)) for j in range(width)] for i in range(height)]
+        return [
+            [data or self._shown(cells.getCellByPosition(j, i)) for j, data in enumerate(row)]
+            for i, row in enumerate(cells.getDataArray())
+        ]
 
     def data(self, book: int, place: str, sheet: str | int = 0) -> list[list[Any]]:
         """The numbers and texts of a range, fast; an error is null."""
@@ -128,15 +129,20 @@ class Driver:
             self.books[book].enableAutomaticCalculation(itself)
         return bool(self.books[book].isAutomaticCalculationEnabled())
 
-    def texts(self) -> dict[str, Any]:
-        """What the office's function wizard shows of our functions, by name."""
+    def texts(self, names: list[str]) -> dict[str, Any]:
+        """What the office's function wizard shows of functions, by name: their help, and that of their arguments."""
         described = self.office.service("com.sun.star.sheet.FunctionDescriptions")
         found = {}
-        for n in range(described.Count):
-            known = {one.Name: one.Value for one in described.getByIndex(n)}
-            arguments = [[a.Name, a.Description, a.IsOptional] for a in known["Arguments"] or ()]
-            found[known["Name"]] = {"help": known["Description"], "arguments": arguments, "group": known["Category"]}
+        for name in names:
+            known = {one.Name: one.Value for one in described.getByName(name)}
+            found[name] = known["Description"], [(a.Name, a.Description) for a in known["Arguments"] or ()]
         return found
+
+    def names(self) -> list[str]:
+        """The names of all functions that the office has."""
+        described = self.office.service("com.sun.star.sheet.FunctionDescriptions")
+        shown = ({one.Name: one.Value for one in described.getByIndex(n)} for n in range(described.Count))
+        return [known["Name"].upper() for known in shown]
 
     def process(self) -> int:
         """The office's process."""

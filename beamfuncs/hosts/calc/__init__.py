@@ -1,1 +1,1 @@
-"""The LibreOffice Calc host: an extension made from the catalogue, which asks the function server. Start at `packing`."""
+"""The LibreOffice Calc host: an extension made from the catalogue that asks the function server. Start at `packing`."""

@@ -53,11 +53,18 @@ def uninstall(office: Office, profile: Path) -> bool:
 
 
 def installed(profile: Path) -> str | None:
-    """Return the version of the extension in a profile, None where it is not there."""
-    kept = profile / "user" / "uno_packages" / "cache" / "uno_packages"
-    for description in kept.glob(f"*/{FILE_NAME}/description.xml"):
+    """Return the version of the extension in a profile, None where it is not there.
+
+    The office lists its extensions in one file, each with the folder that it is in; the folder may outlive it.
+    """
+    cache = profile / "user" / "uno_packages" / "cache"
+    try:
+        listed = (cache / "uno_packages.pmap").read_bytes()
+    except OSError:
+        return None
+    for description in cache.glob(f"uno_packages/*/{FILE_NAME}/description.xml"):
         found = _VERSION.search(description.read_text(encoding="utf-8"))
-        if found:
+        if found and description.parent.parent.name.rstrip("_").encode() in listed:
             return found[1]
     return None
 

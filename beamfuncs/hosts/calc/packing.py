@@ -37,7 +37,8 @@ def contents() -> dict[str, bytes]:
         "Jobs.xcu": xcu.jobs(),
         TABLE: texts.table(),
     }
-    registered, modules = [], []
+    registered: list[Path] = []
+    modules: list[Path] = []
     for path in sorted(COMPONENT.rglob("*.py")):
         (registered if path.name in REGISTERED else modules).append(path)
     return {

@@ -1,7 +1,7 @@
 """An office without a window, started and spoken to from a Python that knows the office's own modules.
 
-This file stands alone, as that Python knows nothing of beamfuncs. As a script it puts an extension into a profile or takes
-it out, where the office's own tool will not, because it is run by root:
+This file stands alone, as that Python knows nothing of beamfuncs. As a script it puts an extension into a profile or
+takes it out, where the office's own tool will not because it is run by root:
 
     python remote.py SOFFICE PROFILE add FILE.oxt
     python remote.py SOFFICE PROFILE remove IDENTIFIER
@@ -13,6 +13,7 @@ import subprocess
 import sys
 import time
 import uuid
+from contextlib import suppress
 from pathlib import Path
 from typing import Any
 
@@ -34,8 +35,13 @@ class Remote:
         import uno
 
         self._channel = f"pipe,name=beamfuncs{uuid.uuid4().hex};urp;StarOffice.ComponentContext"
-        silent = "--headless --invisible --norestore --nologo --nodefault --nofirststartwizard".split()
-        self._command = [str(soffice), *silent, f"--accept={self._channel}", f"-env:UserInstallation={profile.as_uri()}"]
+        silent = ["--headless", "--invisible", "--norestore", "--nologo", "--nodefault", "--nofirststartwizard"]
+        self._command = [
+            str(soffice),
+            *silent,
+            f"--accept={self._channel}",
+            f"-env:UserInstallation={profile.as_uri()}",
+        ]
         self.process = self._launched()
         local = uno.getComponentContext()
         resolver = local.ServiceManager.createInstanceWithContext("com.sun.star.bridge.UnoUrlResolver", local)
@@ -48,10 +54,8 @@ class Remote:
 
     def end(self) -> None:
         """End the office and wait for it."""
-        try:
+        with suppress(Exception):  # the office may hang up before it answers
             self.desktop.terminate()
-        except Exception:  # the office may hang up before it answers
-            pass
         try:
             self.process.wait(PATIENCE)
         except subprocess.TimeoutExpired:

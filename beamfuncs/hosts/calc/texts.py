@@ -29,7 +29,9 @@ def description() -> str:
     xmlns:xlink="http://www.w3.org/1999/xlink">
 <identifier value="{EXTENSION}"/>
 <version value="{version("beamfuncs")}"/>
-<dependencies><l:LibreOffice-minimal-version d:name="LibreOffice {OLDEST_OFFICE}" value="{OLDEST_OFFICE}"/></dependencies>
+<dependencies>
+<l:LibreOffice-minimal-version d:name="LibreOffice {OLDEST_OFFICE}" value="{OLDEST_OFFICE}"/>
+</dependencies>
 <display-name><name lang="en">{escape(TITLE)}</name></display-name>
 <extension-description><src xlink:href="about.txt" lang="en"/></extension-description>
 </description>

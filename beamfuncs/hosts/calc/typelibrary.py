@@ -28,7 +28,9 @@ def is_current() -> bool:
 def shipped() -> bytes:
     """Return the shipped type library; raise where the catalogue has changed since it was built."""
     if not is_current():
-        raise NotBuilt("the functions have changed since the type library was built: run `beamfuncs calc build --types`")
+        raise NotBuilt(
+            "the functions have changed since the type library was built: run `beamfuncs calc build --types`"
+        )
     return LIBRARY.read_bytes()
 
 

@@ -7,8 +7,8 @@ from __future__ import annotations
 
 from typing import Any, Protocol, Sequence, Tuple, Union
 
-from .beamfuncs_client.messages import Failed
 from . import errors, journal
+from .beamfuncs_client.messages import Failed
 
 Cell = Union[float, str]
 Rows = Tuple[Tuple[Cell, ...], ...]

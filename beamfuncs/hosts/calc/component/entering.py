@@ -46,9 +46,9 @@ def runs(formulas: Sequence[Sequence[str]], calls: Test) -> Iterator[Area]:
     >>> list(runs([["=f(1)", "=1"], ["=f(2)", "{=f(3)}"]], lambda formula: "f(" in formula))
     [(0, 0, 1)]
     """
-    for column, below in enumerate(zip(*formulas)):
+    for column in range(len(formulas[0])):
         first = None
-        for row, formula in enumerate((*below, "")):
+        for row, formula in enumerate([*(line[column] for line in formulas), ""]):
             wanted = formula.startswith("=") and calls(formula)
             if wanted and first is None:
                 first = row

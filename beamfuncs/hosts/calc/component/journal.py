@@ -11,9 +11,11 @@ from .beamfuncs_client import places
 LARGEST = 1 << 20
 """Bytes after which the file begins anew, the old one being kept once."""
 
+
 def path() -> Path:
     """Return the file."""
     return places.log().with_name("office.log")
+
 
 def failure(doing: str) -> None:
     """Write down the exception that is being handled, and what was being done; never raise another."""
@@ -26,4 +28,3 @@ def failure(doing: str) -> None:
             stream.write("{} {}\n{}".format(time.strftime("%Y-%m-%d %H:%M:%S"), doing, traceback.format_exc()))
     except OSError:
         pass
-

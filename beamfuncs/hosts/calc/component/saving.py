@@ -10,6 +10,7 @@ import re
 import secrets
 import shutil
 import zipfile
+from contextlib import suppress
 from typing import Callable, Dict, Iterable, Mapping
 
 from .formulas import shortened
@@ -19,6 +20,9 @@ _PARTS = re.compile(r"xl/(?:workbook\.xml|worksheets/[^/]+\.xml|tables/[^/]+\.xm
 _FORMULA = re.compile(
     rb"<((?:[\w.-]+:)?(?:f|formula[12]?|definedName|calculatedColumnFormula|totalsRowFormula))\b[^<>]*(?<!/)>[^<]+(?=</\1>)"
 )
+_MACRO = re.compile(rb"""<definedName\b[^<>]*\sname="([^"]*)"[^<>]*(?:/>|>\s*</definedName>)""")
+"""A macro of that name without content, which the office also lists for each function that is used."""
+_NO_NAMES = re.compile(rb"<definedNames>\s*</definedNames>")
 
 
 def plain_parts(parts: Iterable[str], read: Callable[[str], bytes], names: Mapping[str, str]) -> Dict[str, bytes]:
@@ -29,9 +33,14 @@ def plain_parts(parts: Iterable[str], read: Callable[[str], bytes], names: Mappi
         if _PARTS.fullmatch(part):
             content = read(part)
             plain = _FORMULA.sub(lambda found: short(found[0].decode(*_BYTES)).encode(*_BYTES), content)
+            plain = _NO_NAMES.sub(b"", _MACRO.sub(lambda found: _kept(found, names), plain))
             if plain != content:
                 changed[part] = plain
     return changed
+
+
+def _kept(found: "re.Match[bytes]", names: Mapping[str, str]) -> bytes:
+    return b"" if found[1].decode(*_BYTES).upper() in names else found[0]
 
 
 def put_plain_names(path: str, names: Mapping[str, str]) -> bool:
@@ -55,10 +64,8 @@ def put_plain_names(path: str, names: Mapping[str, str]) -> bool:
         _like(temporary, path)
         os.replace(temporary, path)
     finally:
-        try:
+        with suppress(OSError):
             os.unlink(temporary)
-        except OSError:
-            pass
     return True
 
 
@@ -66,8 +73,6 @@ def _like(path: str, model: str) -> None:
     """Give a file the times, the permissions and, where that is allowed, the owner of another."""
     kept = os.stat(model)
     if hasattr(os, "chown"):
-        try:
+        with suppress(PermissionError):
             os.chown(path, kept.st_uid, kept.st_gid)
-        except PermissionError:
-            pass
     shutil.copystat(model, path)

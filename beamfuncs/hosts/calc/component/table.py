@@ -1,4 +1,4 @@
-"""What was written into the extension when it was packed: its version, its names, and what is known of each function."""
+"""What was written into the extension when it was packed: its version, its names, and its functions."""
 
 from __future__ import annotations
 
