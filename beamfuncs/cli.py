@@ -18,6 +18,8 @@ from typing import TYPE_CHECKING, Annotated, NoReturn
 
 import typer
 
+from beamfuncs.hosts.calc.commands import app as calc
+from beamfuncs.hosts.server.commands import serve
 from beamfuncs.trust import Trust
 
 if TYPE_CHECKING:
@@ -193,6 +195,10 @@ def list_functions(
         print(json.dumps(_as_data(entry), indent=2, ensure_ascii=False))
     else:
         print(f"{entry.call}\n\n{entry.documentation}")
+
+
+app.command()(serve)
+app.add_typer(calc, name="calc")
 
 
 def _give_up(reason: str) -> NoReturn:

@@ -81,9 +81,23 @@ class Driver:
         """The formulas of a range."""
         return [list(row) for row in self._range(book, sheet, place).getFormulaArray()]
 
-    def property(self, book: int, place: str, name: str, sheet: str | int = 0) -> Any:
+    def property(self, book: int, place: str, name: str) -> str:
         """A property of a range."""
-        return self._range(book, sheet, place).getPropertyValue(name)
+        value = self._range(book, 0, place).getPropertyValue(name)
+        return str(getattr(value, "value", value))
+
+    def format(self, book: int, place: str) -> str:
+        """The number format of a range."""
+        key = int(self.property(book, place, "NumberFormat"))
+        return str(self.books[book].getNumberFormats().getByKey(key).FormatString)
+
+    def note(self, book: int, place: str) -> str:
+        """The note on a cell."""
+        return str(self._range(book, 0, place).getAnnotation().getString())
+
+    def is_protected(self, book: int) -> bool:
+        """Whether the first sheet is protected."""
+        return bool(self._sheet(book, 0).isProtected())
 
     def recalculate(self, book: int) -> float:
         """Compute every formula; return the seconds that it took."""
@@ -118,10 +132,6 @@ class Driver:
         from com.sun.star.table import CellAddress
 
         self.books[book].NamedRanges.addNewByName(name, content, CellAddress(0, 0, 0), 0)
-
-    def protect(self, book: int, password: str, sheet: str | int = 0) -> None:
-        """Protect a sheet."""
-        self._sheet(book, sheet).protect(password)
 
     def calculates_itself(self, book: int, itself: bool | None = None) -> bool:
         """Whether the workbook computes by itself, after it has been told so."""

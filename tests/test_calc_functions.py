@@ -1,9 +1,8 @@
-"""Every function in a real LibreOffice Calc: the golden table, errors, blanks, arrays, cells that follow one another."""
+"""Every function in a real LibreOffice Calc: the golden table, errors, blanks, arrays, dependants."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator
-from pathlib import Path
 from typing import Any
 
 import pytest
@@ -37,7 +36,9 @@ def book(calc: CalcOffice) -> Iterator[int]:
 
 def seen(rows: list[list[Any]]) -> list[list[Any]]:
     """Cells as the golden table has them: an error is its value."""
-    return [[ErrorValue(VALUES.get(cell[0], cell[1])) if isinstance(cell, list) else cell for cell in row] for row in rows]
+    return [
+        [ErrorValue(VALUES.get(cell[0], cell[1])) if isinstance(cell, list) else cell for cell in row] for row in rows
+    ]
 
 
 def has_error_in_range(row: Row) -> bool:
@@ -71,7 +72,7 @@ def _typed(cell: Any) -> Any:
 
 
 def test_golden(calc: CalcOffice, book: int) -> None:
-    """Every row of the table gives in Calc what it gives in Python, to the last bit, as an array formula and as another.
+    """Every row of the table gives in Calc what it gives in Python, to the last bit, in an array formula or not.
 
     Where a range holds an error, Calc may answer an error of its own without asking.
     """
