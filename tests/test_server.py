@@ -351,7 +351,7 @@ def test_calls_of_any_number(host: Functions) -> None:
 def asked_apart(host: Functions, *call: Any) -> tuple[threading.Thread, list[Any]]:
     """Ask in a thread of its own; the list will hold the answer."""
     answers: list[Any] = []
-    thread = threading.Thread(target=lambda: answers.extend(host.calls([(call[0], list(call[1:]))])))
+    thread = threading.Thread(target=lambda: answers.append(host.call(call[0], call[1:])))
     thread.start()
     return thread, answers
 
@@ -483,6 +483,9 @@ def test_what_a_dead_server_left(host: Functions, folder: Path) -> None:
 
 def test_eight_hosts_start_one_server(folder: Path) -> None:
     """Hosts that start at the same moment, in a Python without any package, share one server."""
+    count = folder / "count"
+    serve = f"open({str(count)!r}, 'a').write('x'); from beamfuncs.hosts.server.serving import serve; serve()"
+    places.keep_command([sys.executable, "-c", serve])
     code = f"""
 import os, time
 from beamfuncs_client import client, places
@@ -494,6 +497,7 @@ print(client.Functions({VERSION!r}).call("reaction", ["fixed 8 pinned", "udl 12"
     (folder / "now").touch()
     told = [host.communicate(timeout=PATIENCE) for host in hosts]
     assert told == [(f"60.0 {pid()}\n", "")] * 8
+    assert count.read_text() == "x"
     assert logged().count("serves:") == 1
 
 
@@ -704,6 +708,17 @@ def test_the_host_s_own_python_settings_are_not_handed_on(host: Functions, monke
     assert host.call("reaction", [*BEAM, 1]) == 60.0
 
 
+def test_the_host_s_own_time_limit_for_sockets(host: Functions, tmp_path: Path) -> None:
+    """A limit that other parts of an office set for all its sockets does not count here."""
+    odd()
+    socket.setdefaulttimeout(0.01)
+    try:
+        assert host.call("pause", [0.3, str(tmp_path / "begun")]) == pid()
+    finally:
+        socket.setdefaulttimeout(None)
+    assert (tmp_path / "begun").read_text() == "begun\n"
+
+
 def test_nothing_is_imported_from_where_the_host_stands(
     host: Functions, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
@@ -720,7 +735,7 @@ def test_nothing_is_imported_from_where_the_host_stands(
 def test_nobody_else_may_enter(host: Functions, folder: Path) -> None:
     """The folder, the file with the key, and the socket are the user's alone."""
     shutil.rmtree(folder)
-    folder.mkdir(mode=0o700)
+    places.folder()
     places.keep_command(starting_command())
     host.call("reaction", [*BEAM, 1])
     modes = {path.name.partition("-")[0]: stat.S_IMODE(path.lstat().st_mode) for path in (folder, *folder.iterdir())}
@@ -755,7 +770,10 @@ def test_a_file_with_the_key_that_others_can_write(host: Functions, folder: Path
     host.call("reaction", [*BEAM, 1])
     (folder / "server.json").chmod(0o666)
     assert "can be written by other users" in failure(Functions(VERSION), "reaction", *BEAM, 1).reason
-    (folder / "server.json").chmod(0o600)
+    (folder / "server.json").rename(folder / "elsewhere")
+    (folder / "server.json").symlink_to(folder / "elsewhere")
+    assert "symbolic link" in failure(Functions(VERSION), "reaction", *BEAM, 1).reason
+    (folder / "server.json").unlink()
 
 
 def test_the_runtime_folder_of_the_system(monkeypatch: pytest.MonkeyPatch, tmp_path: Path) -> None:
@@ -874,6 +892,19 @@ def test_who_says_nothing_is_shut_out(host: Functions) -> None:
     assert logged().count("said nothing for 0.5 s") == 30
     assert logged().count("got end of file during message") == 1
     assert host.call("echo", [3.0]) == 3.0
+    assert logged().count("serves:") == 1
+
+
+def test_more_connections_than_the_system_allows(host: Functions) -> None:
+    """Where a stranger takes every connection there may be, hosts go on, and new ones come in when it is shut out."""
+    odd({"serving.GREETING": 1.0})
+    places.keep_command(["sh", "-c", 'ulimit -n 40 && exec "$0" "$@"', *places.command()])
+    host.call("echo", [1.0])
+    strangers = [connection() for _ in range(60)]
+    until(lambda: "is not accepted" in logged())
+    assert host.call("echo", [2.0]) == 2.0
+    assert Functions(VERSION).call("echo", [3.0]) == 3.0
+    assert all(is_shut(one) for one in strangers)
     assert logged().count("serves:") == 1
 
 

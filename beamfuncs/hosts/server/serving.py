@@ -252,6 +252,8 @@ def _is_found(here: Running) -> bool:
         return places.running() == here
     except places.UnusableError:
         return False
+    except OSError:  # out of files, for now
+        return True
 
 
 def _free_address() -> str:

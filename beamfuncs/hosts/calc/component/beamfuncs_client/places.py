@@ -18,7 +18,9 @@ from typing import Any, NamedTuple
 
 OWN_FOLDER = "BEAMFUNCS_FOLDER"
 POLLED = 0.02
-"""Seconds between two looks at a lock that another holds."""
+"""Seconds between two looks at what another process holds."""
+REPLACING = 5.0
+"""Seconds in which a file that others look at can be replaced."""
 
 
 class UnusableError(Exception):
@@ -158,17 +160,29 @@ def _write(path: Path, content: Any) -> None:
     try:
         with os.fdopen(handle, "w", encoding="utf-8") as file:
             json.dump(content, file)
-        os.replace(name, str(path))
+        _replace(name, path)
     except BaseException:
         os.unlink(name)
         raise
+
+
+def _replace(name: str, path: Path) -> None:
+    """Put a file in the place of another, on Windows when nobody reads that one."""
+    until = time.monotonic() + (REPLACING if sys.platform == "win32" else 0.0)
+    while True:
+        try:
+            return os.replace(name, str(path))
+        except PermissionError:
+            if time.monotonic() >= until:
+                raise
+        time.sleep(POLLED)
 
 
 def _read(path: Path) -> Any:
     """Return what a file of ours says, None where there is none; no link is followed, and no file of others read."""
     try:
         handle = os.open(str(path), os.O_RDONLY | getattr(os, "O_NOFOLLOW", 0))
-    except OSError:
+    except (FileNotFoundError, PermissionError):  # the latter on Windows, while the file is being replaced
         return None
     with os.fdopen(handle, encoding="utf-8") as file:
         found = os.fstat(handle)

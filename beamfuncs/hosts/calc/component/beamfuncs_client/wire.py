@@ -6,13 +6,19 @@ import os
 import socket
 import struct
 import sys
-from contextlib import closing
+from contextlib import contextmanager
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from collections.abc import Iterator
     from multiprocessing.connection import Connection
 
-    Wire = Connection[Any, Any]
+    if sys.platform == "win32":
+        from multiprocessing.connection import PipeConnection
+
+        Wire = Connection[Any, Any] | PipeConnection[Any, Any]
+    else:
+        Wire = Connection[Any, Any]
 
 NO_LIMIT = 0.0
 
@@ -65,5 +71,12 @@ def _as_time(seconds: float) -> bytes:
     return struct.pack("ll", int(whole), int(part * 1e6))
 
 
-def _socket(connection: Wire) -> closing[socket.socket]:
-    return closing(socket.socket(fileno=os.dup(connection.fileno())))
+@contextmanager
+def _socket(connection: Wire) -> Iterator[socket.socket]:
+    """Give the socket of a connection; it stays open."""
+    lent = socket.socket(fileno=connection.fileno())
+    lent.setblocking(True)  # whatever time limit the host has set for its own sockets
+    try:
+        yield lent
+    finally:
+        lent.detach()
