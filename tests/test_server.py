@@ -588,15 +588,6 @@ def test_serve_by_hand(host: Functions) -> None:
     assert subprocess.run([*command, "0.2"], capture_output=True, check=False, timeout=PATIENCE).returncode == 0
 
 
-def test_help_stays_quick() -> None:
-    """What only the server needs is not read for the help of the command line."""
-    code = (
-        "import sys, beamfuncs.cli; print(sorted({'numpy', 'multiprocessing', 'logging.handlers'} & set(sys.modules)))"
-    )
-    told = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
-    assert told.stdout == "[]\n"
-
-
 # --- versions -------------------------------------------------------------------------------------------
 
 
