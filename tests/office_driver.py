@@ -127,6 +127,10 @@ class Driver:
         """What can be undone."""
         return list(self.books[book].getUndoManager().getAllUndoActionTitles())
 
+    def named(self, book: int) -> list[str]:
+        """The names that are defined."""
+        return list(self.books[book].NamedRanges.ElementNames)
+
     def name(self, book: int, name: str, content: str) -> None:
         """Give a formula a name."""
         from com.sun.star.table import CellAddress

@@ -65,10 +65,19 @@ def test_numbers_and_texts() -> None:
     assert answers.rows(Answering([[1.0, 2.0], [3.0, 4.0]]), "moment_at", []) == ((1.0, 2.0), (3.0, 4.0))
 
 
-def test_few_entries_for_many_cells() -> None:
-    """Ten thousand calls, one below the other, are entered at once: one by one they would take quadratic time."""
-    formulas = [[f"=reaction(A{n};B{n};1)", f"=A{n}*2", f'="reaction(1)"&A{n}'] for n in range(10_000)]
-    assert list(entering.runs(formulas, CALLS)) == [(0, 0, 9_999)]
+@pytest.mark.parametrize("rows", [1, 2, 3, 10, 1000, 10_000])
+def test_pieces(rows: int) -> None:
+    """The pieces of a run hold every row once, in numbers that grow as its square root, and are first entered apart."""
+    found = list(entering.pieces(rows))
+    assert sorted(row for first, stop in found for row in range(first, stop)) == list(range(rows))
+    assert len(found) <= 2 * rows**0.5 + 4
+    entered: set[int] = set()
+    largest = int(rows**0.5)
+    for first, stop in found:
+        if stop - first > 1:
+            assert not {first - 1, stop} & entered
+            assert stop - first < largest
+        entered.update(range(first, stop))
 
 
 def test_runs_end_at_other_formulas() -> None:

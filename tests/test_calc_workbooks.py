@@ -35,6 +35,8 @@ SHOWN = {
     "C3": "#VALUE!",
 }
 """What the cells of `schedule` show."""
+SHOWN_BESIDE_UNKNOWN = {**SHOWN, "A10": "#NAME?"}
+"""What they show in a workbook with functions that Calc does not know: formulas that have a name are left."""
 
 
 @pytest.fixture(scope="module")
@@ -57,8 +59,11 @@ def colleague(folder: Path) -> Iterator[CalcOffice]:
         yield office
 
 
-def schedule(path: Path) -> Path:
-    """A workbook with plain names and no values, as another program writes it."""
+def schedule(path: Path, unknown: bool = False) -> Path:
+    """A workbook with plain names, as another program writes it, perhaps with a function that Calc does not know.
+
+    `F1` holds that one, and its stored value 77; `A3` and `A4` store 5, which they are not.
+    """
     book = openpyxl.Workbook()
     sheet = book.worksheets[0]
     sheet["A1"], sheet["B1"] = BEAM, LOADS
@@ -74,7 +79,18 @@ def schedule(path: Path) -> Path:
     sheet["C1"] = ArrayFormula("C1:C3", "=moment_at(A1,B1,E1:E3)")
     sheet["A3"].number_format, sheet["A3"].font = '0.0" kN"', Font(bold=True)
     book.defined_names["Far"] = DefinedName("Far", attr_text="reaction(Sheet!$A$1,Sheet!$B$1,2)")
+    if unknown:
+        sheet["F1"] = "=_xlfn.NEWER(A1,{})"
     book.save(path)
+    with zipfile.ZipFile(path) as archive:
+        parts = {name: archive.read(name) for name in archive.namelist()}
+    xml = parts["xl/worksheets/sheet1.xml"].decode()
+    for place, value in (("A3", 5), ("A4", 5), ("F1", 77)):
+        xml = re.sub(rf'(<c r="{place}"[^>]*><f>[^<]*</f>)<v ?/>', rf"\g<1><v>{value}</v>", xml)
+    parts["xl/worksheets/sheet1.xml"] = xml.encode()
+    with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED) as archive:
+        for name, content in parts.items():
+            archive.writestr(name, content)
     return path
 
 
@@ -90,15 +106,19 @@ def in_file(path: Path) -> dict[str, str]:
     return dict(re.findall(r'<c r="(\w+)"[^>]*><f[^>]*>([^<]*)</f>', xml))
 
 
-def test_a_workbook_of_another_program_is_live(calc: CalcOffice, tmp_path: Path) -> None:
+@pytest.mark.parametrize("unknown", [False, True])
+def test_a_workbook_of_another_program_is_live(calc: CalcOffice, tmp_path: Path, unknown: bool) -> None:
     """Plain names are the functions as soon as the workbook is open; it is unchanged by that, with nothing to undo."""
-    book = calc.open(schedule(tmp_path / "plain.xlsx"))
-    assert shown(calc, book) == SHOWN
+    book = calc.open(schedule(tmp_path / "plain.xlsx", unknown))
+    assert shown(calc, book) == (SHOWN_BESIDE_UNKNOWN if unknown else SHOWN)
+    assert calc.read(book, "F1") == [[77.0 if unknown else None]]
     assert not calc.is_modified(book)
     assert calc.undone(book) == []
+    assert calc.named(book) == ["Far"]
     calc.enter(book, {"A1": "fixed 4 pinned"})
     assert calc.read(book, "A3:A4") == [[30.0], [60.0]]
-    assert calc.read(book, "A10") == [[18.0]]
+    if not unknown:
+        assert calc.read(book, "A10") == [[18.0]]
     assert calc.read(book, "C1:C2") == [[0.0], [12.0]]
     calc.close(book)
 
@@ -201,17 +221,22 @@ def test_a_copy_is_made_plain_by_the_command(calc: CalcOffice, tmp_path: Path) -
     calc.close(book)
 
 
+@pytest.mark.parametrize("unknown", [False, True])
 @pytest.mark.parametrize("password", ["", "a secret"])
-def test_protected_sheets(calc: CalcOffice, tmp_path: Path, password: str) -> None:
-    """The cells of a protected sheet are live too, and the sheet is as protected as before."""
-    path = schedule(tmp_path / "plain.xlsx")
+def test_protected_sheets(calc: CalcOffice, tmp_path: Path, password: str, unknown: bool) -> None:
+    """The cells of a protected sheet are live too, and the sheet is as protected as before.
+
+    Array formulas of it stay as they are where the workbook calls functions that Calc does not know.
+    """
+    path = schedule(tmp_path / "plain.xlsx", unknown)
     book = openpyxl.load_workbook(path)
     book.worksheets[0].protection.sheet = True
     if password:
         book.worksheets[0].protection.password = password
     book.save(path)
     opened = calc.open(path)
-    assert shown(calc, opened) == SHOWN
+    arrays = dict.fromkeys(("C1", "C2", "C3"), "#NAME?")
+    assert shown(calc, opened) == ({**SHOWN_BESIDE_UNKNOWN, **arrays} if unknown else SHOWN)
     assert calc.is_protected(opened)
     calc.close(opened)
 
@@ -229,8 +254,9 @@ def test_a_workbook_that_computes_when_told(calc: CalcOffice, tmp_path: Path) ->
     calc.close(opened)
 
 
-def test_a_tall_workbook(calc: CalcOffice, tmp_path: Path) -> None:
-    """A tall column of calls, and two that alternate with other formulas, are all live."""
+@pytest.mark.parametrize("unknown", [False, True])
+def test_a_tall_workbook(calc: CalcOffice, tmp_path: Path, unknown: bool) -> None:
+    """A tall column of calls, and one in which they alternate with other formulas, are all live."""
     book = openpyxl.Workbook(write_only=True)
     sheet = book.create_sheet()
     for n in range(1, 3001):
@@ -238,6 +264,7 @@ def test_a_tall_workbook(calc: CalcOffice, tmp_path: Path) -> None:
         sheet.append(
             [n, f'=reaction("pinned "&A{n}&" roller","udl 12",1)', odd, '=loads_read("pinned 6 free","udl 1")']
         )
+    sheet.append([None, None, None, "=_xlfn.NEWER(A1)" if unknown else "=1"])
     book.save(tmp_path / "tall.xlsx")
     opened = calc.open(tmp_path / "tall.xlsx")
     rows = calc.data(opened, "A1:C3000")

@@ -68,7 +68,7 @@ def _of_server() -> Finding:
     try:
         answer = functions.call(*QUESTION)
     except Failed as failed:
-        return Finding("function server", failed.reason, "run `beamfuncs calc install` once more; the logs may tell more")
+        return Finding("function server", failed.reason, "run `beamfuncs calc install`; the logs may tell more")
     finally:
         functions.close()
     return Finding("function server", f"answers {answer:g} to reaction of {QUESTION[1]}; the right answer is 60")

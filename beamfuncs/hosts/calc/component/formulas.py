@@ -20,6 +20,19 @@ def calls_to(names: Iterable[str]) -> Callable[[str], bool]:
     return lambda formula: bool(call.search(formula)) and bool(call.search(_TEXTS.sub('""', formula)))
 
 
+def calls_unknown(names: Iterable[str]) -> Callable[[str], bool]:
+    """Return a test of whether a formula calls a function that neither the office knows nor is among these.
+
+    The office shows the names of functions that it does not know in small letters.
+
+    >>> test = calls_unknown(["moment_at"])
+    >>> [test(f) for f in ("=moment_at(1)", "=SUM($Sheet1.A1)", "=IF(_xlfn.xlookup(1;A1:A3;B1:B3);1;2)", '="of x(1)"')]
+    [False, False, True, False]
+    """
+    known, call = frozenset(names), re.compile(r"(?<![\w.$])[a-z_][\w.]*(?=\s*\()")
+    return lambda formula: not known.issuperset(call.findall(_TEXTS.sub('""', formula)))
+
+
 def shortened(names: Mapping[str, str]) -> "Callable[[str], str]":
     """Return what puts the plain names of functions in the place of their long ones, given by long name.
 

@@ -2,19 +2,19 @@
 
 import uno
 import unohelper
-from beamfuncs_component import entering, formulas, journal, saving, table
+from beamfuncs_component import entering, journal, saving, table
 from com.sun.star.lang import XServiceInfo
 from com.sun.star.task import XJob
 
 JOB = "com.sun.star.task.Job"
 WORKBOOK = "com.sun.star.sheet.SpreadsheetDocument"
 TABLE = table.read()
-CALLS, LONG_NAMES = formulas.calls_to(TABLE.names), TABLE.long_names
+NAMES, LONG_NAMES = TABLE.names, TABLE.long_names
 
 
 def enter_anew(document):
     """Let the plain names in a workbook of another program be the functions."""
-    entering.enter_anew(document, CALLS)
+    entering.enter_anew(document, NAMES)
 
 
 def put_plain_names(document):
