@@ -73,12 +73,11 @@ def mistake(beam: Argument) -> float:
     raise ZeroDivisionError(f"cannot happen to {beam}")
 
 
-for odd in (echo, pause, crash, mistake):
-    setattr(functions, odd.__name__, odd)
-
 if __name__ == "__main__":
     from beamfuncs.hosts.server import serving
 
+    for odd in (echo, pause, crash, mistake):
+        setattr(functions, odd.__name__, odd)
     for name, value in json.loads(sys.argv[1]).items():
         module, constant = name.split(".")
         setattr(importlib.import_module(f"beamfuncs.hosts.server.{module}"), constant, value)
