@@ -75,7 +75,10 @@ class CalcOffice:
 
 @contextmanager
 def running(profile: Path, folder: Path, *, extension: bool = True) -> Iterator[CalcOffice]:
-    """An office with a profile of its own, with the extension or without; `folder` is that of its function server."""
+    """An office with a profile of its own, with the extension or without; `folder` is that of its function server.
+
+    At the end the extension must have told of no failure of its own.
+    """
     office = an_office()
     folder.mkdir(mode=0o700, exist_ok=True)
     with pytest.MonkeyPatch.context() as patch:
@@ -87,3 +90,5 @@ def running(profile: Path, folder: Path, *, extension: bool = True) -> Iterator[
         yield calc
     finally:
         calc.end()
+    told = folder / "office.log"
+    assert not told.exists(), told.read_text()

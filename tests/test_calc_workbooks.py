@@ -154,6 +154,26 @@ def test_saved_and_opened_again(calc: CalcOffice, tmp_path: Path, kind: str) -> 
     calc.close(book)
 
 
+def test_an_ods_with_plain_names(calc: CalcOffice, tmp_path: Path) -> None:
+    """An .ods whose formulas have plain names is live too."""
+    saved, path = tmp_path / "saved.ods", tmp_path / "plain.ods"
+    book = calc.new()
+    calc.enter(book, {"A1": BEAM, "A2": "=reaction(A1; B1; 1)", "B1": LOADS})
+    calc.save_as(book, saved, ODS)
+    calc.close(book)
+    with zipfile.ZipFile(saved) as archive, zipfile.ZipFile(path, "w") as copy:
+        for name in archive.namelist():
+            content = archive.read(name)
+            plain = content.replace(b"of:=BEAMFUNCS.CALC.FUNCTIONS.REACTION(", b"of:=reaction(")
+            assert (plain != content) == (name == "content.xml")
+            copy.writestr(name, plain)
+    book = calc.open(path)
+    assert calc.read(book, "A2") == [[60.0]]
+    calc.enter(book, {"B1": "udl 24"})
+    assert calc.read(book, "A2") == [[120.0]]
+    calc.close(book)
+
+
 def test_saved_with_plain_names(calc: CalcOffice, tmp_path: Path) -> None:
     """What Calc saves for Excel has plain names, in cells, arrays and named formulas; `fill` computes it the same."""
     path = tmp_path / "saved.xlsx"
