@@ -13,6 +13,7 @@ from typing import Any
 import pytest
 
 from beamfuncs.hosts.calc import installing, offices, remote
+from beamfuncs.hosts.server import control
 
 XLSX, ODS = "Calc MS Excel 2007 XML", "calc8"
 DRIVER = Path(__file__).with_name("office_driver.py")
@@ -90,5 +91,8 @@ def running(profile: Path, folder: Path, *, extension: bool = True) -> Iterator[
         yield calc
     finally:
         calc.end()
+        with pytest.MonkeyPatch.context() as patch:
+            patch.setenv(FOLDER, str(folder))
+            control.stop()
     told = folder / "office.log"
     assert not told.exists(), told.read_text()

@@ -12,9 +12,11 @@ from typing import Any
 
 import openpyxl
 import pytest
+from typer.testing import CliRunner
 
 from beamfuncs.catalogue import catalogue
-from beamfuncs.hosts.calc import freezing, naming, rewriting
+from beamfuncs.cli import app
+from beamfuncs.hosts.calc import freezing, naming, packing, rewriting
 from beamfuncs.hosts.calc.component import answers, entering, errors, saving
 from beamfuncs.hosts.calc.component.beamfuncs_client.messages import Failed
 from beamfuncs.hosts.calc.component.formulas import calls_to
@@ -218,3 +220,31 @@ def test_frozen_cells() -> None:
         f"<table:table-cell {value}>{noted}<text:p>60</text:p></table:table-cell>"
         f"<table:table-cell>{note.partition('=')[0]}=fault([.A1])</text:p></office:annotation></table:table-cell>"
     )
+
+
+# --- the commands ---------------------------------------------------------------------------------------
+
+
+def test_the_commands(tmp_path: Path) -> None:
+    """`plain`, `freeze` and `build` tell what they wrote, and in one line why they wrote nothing."""
+    saved, ods, extension = tmp_path / "saved.xlsx", tmp_path / "saved.ods", tmp_path / "beamfuncs.oxt"
+    as_calc_writes(saved)
+    with zipfile.ZipFile(ods, "w") as archive:
+        archive.writestr("content.xml", '<table:table-cell table:formula="of:=reaction(1)" office:value="60"/>')
+    assert run("plain", saved) == (0, f"{saved}: plain names\n")
+    assert run("plain", saved) == (0, f"{saved}: nothing to do\n")
+    assert run("plain", ods) == (2, f"beamfuncs: {ods}: no workbook of the Excel kind\n")
+    frozen = tmp_path / "saved.frozen.ods"
+    assert run("freeze", ods) == (0, f"{frozen}: 1 beam formula frozen\n")
+    assert b"table:formula" not in contents(frozen)["content.xml"]
+    assert run("freeze", ods, "-o", ods) == (2, f"beamfuncs: {ods}: is the workbook itself\n")
+    assert run("freeze", saved)[0] == 2
+    assert run("build", "-o", extension) == (0, f"{extension}: written\n")
+    assert extension.read_bytes() == packing.packed()
+    assert run("build", "-o", tmp_path / "nowhere" / "beamfuncs.oxt")[0] == 2
+
+
+def run(*words: object) -> tuple[int, str]:
+    """The exit status and the words of a command of `beamfuncs calc`."""
+    result = CliRunner().invoke(app, ["calc", *map(str, words)])
+    return result.exit_code, result.output

@@ -15,11 +15,13 @@ from openpyxl.styles import Font
 from openpyxl.workbook.defined_name import DefinedName
 from openpyxl.worksheet.formula import ArrayFormula
 from test_calc_functions import seen
-from unfilled import stored
+from unfilled import Value, stored, without_values
 
 from beamfuncs.hosts.calc import rewriting
 from beamfuncs.hosts.headless.filling import fill
 
+KESTREL_QUAY = Path(__file__).parent.parent / "workbooks" / "kestrel_quay.xlsx"
+CHANGED = "Schedule", "C9"
 BEAM, LOADS = "fixed 8 pinned", "udl 12"
 SHOWN = {
     "A3": 60.0,
@@ -239,6 +241,38 @@ def test_a_copy_is_made_plain_by_the_command(calc: CalcOffice, tmp_path: Path) -
     book = calc.open(copy)
     assert shown(calc, book) == SHOWN
     calc.close(book)
+
+
+def test_the_example_workbook(calc: CalcOffice, tmp_path: Path) -> None:
+    """The Kestrel Quay schedule opens live: a span is changed in Calc, and all cells come to what `fill` computes."""
+    fresh, saved = tmp_path / "kestrel_quay.xlsx", tmp_path / "saved.xlsx"
+    without_values(KESTREL_QUAY, fresh)
+    book = calc.open(fresh)
+    calc.save_as(book, saved, XLSX)
+    expected = stored(fill(fresh, tmp_path / "filled.xlsx").target)
+    found = stored(saved)
+    assert len(expected) > 200
+    assert differing(expected, found) == {}
+    changed = openpyxl.load_workbook(fresh)
+    sheet, place = CHANGED
+    length = changed[sheet][place].value
+    assert isinstance(length, (int, float))
+    changed[sheet][place] = length + 0.5
+    changed.save(fresh)
+    calc.enter(book, {place: length + 0.5}, sheet)
+    calc.save(book)
+    calc.close(book)
+    later = stored(fill(fresh, tmp_path / "filled.xlsx").target)
+    assert differing(later, stored(saved)) == {}
+    assert len(differing(expected, later)) > 5
+
+
+Values = dict[tuple[str, str], Value]
+
+
+def differing(ours: Values, theirs: Values) -> dict[tuple[str, str], tuple[Value, Value]]:
+    """The cells that do not hold the same, but for the last digits of a number."""
+    return {place: (one, theirs[place]) for place, one in ours.items() if not one.agrees(theirs[place], 1e-9)}
 
 
 @pytest.mark.parametrize("unknown", [False, True])

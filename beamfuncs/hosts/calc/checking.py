@@ -42,7 +42,7 @@ def findings(office: offices.Office | None, profile: Path) -> Iterator[Finding]:
 
 def _of_office(office: offices.Office | None) -> Iterator[Finding]:
     if office is None:
-        remedy = "install LibreOffice, or say where its programs are: --office FOLDER"
+        remedy = "install LibreOffice (no Flatpak or Snap: they are shut in), or say where it is: --office FOLDER"
         yield Finding("office", "LibreOffice is not found", remedy)
         return
     yield Finding("office", f"{office.version}, in {office.program}")

@@ -106,7 +106,7 @@ def freeze(
         target, count = rewriting.freeze(book, out)
     except rewriting.NotRewritten as error:
         _give_up(str(error))
-    print(f"{target}: {count} beam formulas frozen")
+    print(f"{target}: {count} beam formula{'s' * (count != 1)} frozen")
 
 
 @app.command()
