@@ -11,9 +11,7 @@ from golden import GOLDEN, SHEET, Row, answer, bits_of, rows_of
 
 from beamfuncs.catalogue import catalogue
 from beamfuncs.errors import ErrorValue
-from beamfuncs.hosts.calc.component.errors import CODES
 
-VALUES = {code: value for value, code in CODES.items()}
 ERROR_IN_RANGE = 504
 """What the office answers itself, without asking us, where a range holds an error."""
 
@@ -35,10 +33,8 @@ def book(calc: CalcOffice) -> Iterator[int]:
 
 
 def seen(rows: list[list[Any]]) -> list[list[Any]]:
-    """Cells as the golden table has them: an error is its value."""
-    return [
-        [ErrorValue(VALUES.get(cell[0], cell[1])) if isinstance(cell, list) else cell for cell in row] for row in rows
-    ]
+    """Cells as the golden table has them: an error is what the office shows of it."""
+    return [[ErrorValue(cell[1]) if isinstance(cell, list) else cell for cell in row] for row in rows]
 
 
 def has_error_in_range(row: Row) -> bool:
