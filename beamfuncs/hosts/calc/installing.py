@@ -78,11 +78,9 @@ def _change(office: Office, profile: Path, action: str, extension: str) -> None:
             raise NotInstalled("there is no Python that knows the office (Debian: python3-uno)")
         command = [str(office.python), remote.__file__, str(office.soffice), str(profile), action, extension]
     else:
-        forced = ["--force"] if action == "add" else []
+        options = ["--suppress-license", "--force"] if action == "add" else []
         where = f"-env:UserInstallation={profile.as_uri()}"
-        command = [str(office.unopkg), action, "--suppress-license", *forced, where, extension]
-        if action == "remove":
-            command.remove("--suppress-license")
+        command = [str(office.unopkg), action, *options, where, extension]
     try:
         done = subprocess.run(command, capture_output=True, text=True, check=False, timeout=PATIENCE)
     except (OSError, subprocess.TimeoutExpired) as error:
