@@ -10,6 +10,7 @@ from xml.sax.saxutils import escape, quoteattr
 from beamfuncs.catalogue import catalogue
 from beamfuncs.hosts.calc.idl import gives_rows
 from beamfuncs.hosts.calc.naming import EXTENSION, INTERFACE, LOADED, SAVED, SERVICE, method
+from beamfuncs.hosts.excel_addin.places import ADDIN
 
 OLDEST_OFFICE = "7.2"
 TITLE = "beamfuncs: worksheet functions for beams"
@@ -62,6 +63,6 @@ def table() -> str:
         }
         for entry in catalogue().values()
     }
-    names = {"service": SERVICE, "interface": INTERFACE, "loaded": LOADED, "saved": SAVED}
+    names = {"service": SERVICE, "interface": INTERFACE, "loaded": LOADED, "saved": SAVED, "addin": ADDIN}
     known = {"version": version("beamfuncs"), **names, "functions": functions}
     return json.dumps(known, indent=1, ensure_ascii=False) + "\n"

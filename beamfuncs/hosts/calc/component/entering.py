@@ -3,7 +3,8 @@
 They become the functions where a formula is compiled anew, and the office compiles all whose names it does not know
 when a name is defined. So a name is defined and taken away again: one step for any number of cells. Where it does not
 know other functions either, this would replace what is stored of those by errors: there our formulas are entered piece
-by piece, and formulas with a name of their own are left.
+by piece, and formulas with a name of their own are left. Piece by piece are entered too those that Excel stored by way
+of its add-in, as `[1]!reaction(...)`.
 
 No other formula or format is touched, there is nothing to undo, and the workbook counts as unchanged.
 """
@@ -12,9 +13,9 @@ from __future__ import annotations
 
 from contextlib import contextmanager
 from math import isqrt
-from typing import Any, Callable, Iterable, Iterator, List, Sequence, Set, Tuple
+from typing import Any, Callable, Collection, Iterable, Iterator, List, Sequence, Set, Tuple
 
-from .formulas import calls_to, calls_unknown
+from .formulas import calls_to, calls_unknown, unlinked
 
 FORMULAS = 16
 """The office's flag for cells that hold formulas."""
@@ -29,13 +30,19 @@ Run = Tuple[int, int, int]
 """A column, and the first and the last row, of cells one below the other."""
 
 
-def enter_anew(document: Any, names: Sequence[str]) -> bool:
-    """Make plain names in the formulas of a document the functions of these names; tell whether there were any."""
-    ours, unknown = calls_to(names), calls_unknown(names)
+def enter_anew(document: Any, names: Sequence[str], links: Collection[int] = ()) -> bool:
+    """Make plain names in the formulas of a document the functions of these names; tell whether there were any.
+
+    `links` are the numbers of the document's links to the Excel add-in: a name behind one of them counts as plain.
+    """
+    ours, unknown, plain_name = calls_to(names), calls_unknown(names), unlinked(names, links)
     sheets = _elements(document.Sheets)
-    blocks = [block for sheet in sheets for block in _blocks(sheet)]
+    stored = [block for sheet in sheets for block in _blocks(sheet)]
+    blocks = [_spelt(block, plain_name) for block in stored]
     plain = [block for block in blocks if _any(block, ours)]
-    named = [one for part in (document, *sheets) for one in _elements(part.NamedRanges) if ours("=" + one.Content)]
+    linked = [_spelt(block, plain_name) for block in stored if _any(block, lambda one: plain_name(one) != one)]
+    named = [(one, plain_name(one.Content)) for part in (document, *sheets) for one in _elements(part.NamedRanges)]
+    named = [(one, content) for one, content in named if ours("=" + content)]
     if plain or named:
         with _quietly(document):
             if any(_any(block, unknown) for block in blocks):
@@ -43,8 +50,10 @@ def enter_anew(document: Any, names: Sequence[str]) -> bool:
                     _enter_pieces(block, ours)
             else:
                 _compile_all(document)
-                for name in named:
-                    name.setContent(name.Content)
+                for block in linked:
+                    _enter_pieces(block, ours)
+                for name, content in named:
+                    name.setContent(content)
     return bool(plain or named)
 
 
@@ -123,6 +132,11 @@ def _arrays(block: Block, calls: Test) -> Iterator[Tuple[Any, str]]:
 def _blocks(sheet: Any) -> Iterator[Block]:
     for cells in _elements(sheet.queryContentCells(FORMULAS)):
         yield sheet, cells, cells.getFormulaArray()
+
+
+def _spelt(block: Block, spelling: Callable[[str], str]) -> Block:
+    sheet, cells, formulas = block
+    return sheet, cells, tuple(tuple(map(spelling, line)) for line in formulas)
 
 
 def _any(block: Block, test: Test) -> bool:

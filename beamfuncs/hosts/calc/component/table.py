@@ -10,13 +10,14 @@ FILE = "functions.json"
 
 
 class Table(NamedTuple):
-    """The names of the services, and the functions by the names of their methods."""
+    """The names of the services and of the Excel add-in's file, and the functions by the names of their methods."""
 
     version: str
     service: str
     interface: str
     loaded: str
     saved: str
+    addin: str
     functions: Dict[str, Dict[str, Any]]
 
     @property

@@ -2,7 +2,7 @@
 
 import uno
 import unohelper
-from beamfuncs_component import entering, journal, saving, table
+from beamfuncs_component import entering, journal, linking, saving, table
 from com.sun.star.lang import XServiceInfo
 from com.sun.star.task import XJob
 
@@ -13,15 +13,16 @@ NAMES, LONG_NAMES = TABLE.names, TABLE.long_names
 
 
 def enter_anew(document):
-    """Let the plain names in a workbook of another program be the functions."""
-    entering.enter_anew(document, NAMES)
+    """Let the plain names in a workbook of another program, and its calls of the Excel add-in, be the functions."""
+    path = _excel_file(document)
+    entering.enter_anew(document, NAMES, linking.links_to(path, TABLE.addin) if path else ())
 
 
 def put_plain_names(document):
     """Write plain names into the file of a workbook that is saved the Excel way."""
-    url = document.getURL()
-    if url.startswith("file:") and url.lower().endswith((".xlsx", ".xlsm", ".xltx", ".xltm")):
-        saving.put_plain_names(uno.fileUrlToSystemPath(url), LONG_NAMES)
+    path = _excel_file(document)
+    if path:
+        saving.put_plain_names(path, LONG_NAMES)
 
 
 class Job(unohelper.Base, XJob, XServiceInfo):
@@ -56,6 +57,13 @@ class Loaded(Job):
 class Saved(Job):
     name = TABLE.saved
     work = staticmethod(put_plain_names)
+
+
+def _excel_file(document):
+    """Return the path of a document's file, nothing where it is not of the Excel kind."""
+    url = document.getURL()
+    is_excel = url.startswith("file:") and url.lower().endswith((".xlsx", ".xlsm", ".xltx", ".xltm"))
+    return uno.fileUrlToSystemPath(url) if is_excel else ""
 
 
 def _document(arguments):
