@@ -91,6 +91,10 @@ class Driver:
         key = int(self.property(book, place, "NumberFormat"))
         return str(self.books[book].getNumberFormats().getByKey(key).FormatString)
 
+    def paint(self, book: int, place: str, colour: int, sheet: str | int = 0) -> None:
+        """Give the cells of a range a ground."""
+        self._range(book, sheet, place).CellBackColor = colour
+
     def note(self, book: int, place: str) -> str:
         """The note on a cell."""
         return str(self._range(book, 0, place).getAnnotation().getString())
