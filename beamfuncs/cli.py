@@ -14,11 +14,13 @@ from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from dataclasses import asdict
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated, Any, NoReturn
+from typing import TYPE_CHECKING, Annotated, NoReturn
 
 import typer
-from typer.core import TyperGroup
 
+from beamfuncs.hosts.calc.commands import app as calc
+from beamfuncs.hosts.excel_addin.commands import app as excel
+from beamfuncs.hosts.server.commands import serve
 from beamfuncs.status import DONE, DONE_WITH_ERRORS, NOTHING_DONE, give_up
 from beamfuncs.trust import Trust
 
@@ -47,31 +49,6 @@ app = typer.Typer(
     help="Worksheet functions that solve any line beam exactly: fill workbooks, list the functions.",
     no_args_is_help=True,
     add_completion=False,
-)
-
-
-class _Later(TyperGroup):
-    """The commands of a host, whose module is imported when one of them is named."""
-
-    def list_commands(self, ctx: Any) -> list[str]:
-        return list(_excel().commands)
-
-    def get_command(self, ctx: Any, cmd_name: str) -> Any:
-        return _excel().get_command(ctx, cmd_name)
-
-
-def _excel() -> TyperGroup:
-    from beamfuncs.hosts.excel_addin.commands import app
-
-    return typer.main.get_group(app)
-
-
-app.add_typer(
-    typer.Typer(),
-    name="excel",
-    help="The functions in Excel (Windows): install, check, uninstall.",
-    cls=_Later,
-    no_args_is_help=True,
 )
 
 Trusted = Annotated[
@@ -219,6 +196,11 @@ def list_functions(
         print(json.dumps(_as_data(entry), indent=2, ensure_ascii=False))
     else:
         print(f"{entry.call}\n\n{entry.documentation}")
+
+
+app.command()(serve)
+app.add_typer(calc, name="calc")
+app.add_typer(excel, name="excel")
 
 
 @contextmanager

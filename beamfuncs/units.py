@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from functools import lru_cache
+from threading import Lock
 from typing import Any
 
 from beamfuncs.cells import Frozen
@@ -97,8 +98,17 @@ def _unknown(argument: str, text: str, part: str) -> BeamError:
     )
 
 
-@lru_cache(1)
+_MAKING = Lock()
+
+
 def _registry() -> Any:
+    """Return the one registry: units of two do not go together, so threads must not make two."""
+    with _MAKING:
+        return _made()
+
+
+@lru_cache(1)
+def _made() -> Any:
     import pint
 
     return pint.UnitRegistry()

@@ -205,8 +205,9 @@ def test_as_a_process(tmp_path: Path) -> None:
 
 
 def test_help_loads_nothing_heavy() -> None:
-    """The program and its help load no solver, engine or workbook library: those come when they are needed."""
-    heavy = ["numpy", "scipy", "openpyxl", "formualizer", "pint", "xlwings", "beamfuncs.functions", "beamfuncs.hosts"]
+    """The program and its help load no solver, engine, workbook library or server: those come when they are needed."""
+    heavy = ["numpy", "scipy", "openpyxl", "formualizer", "pint", "xlwings", "multiprocessing"]
+    heavy += ["beamfuncs.functions", "beamfuncs.hosts.headless", "beamfuncs.hosts.server.serving"]
     look = f"print([name for name in {heavy} if name in sys.modules], file=sys.stderr)"
     code = f"import sys, beamfuncs.cli as cli; {look}\ntry: cli.app(['--help'])\nfinally: {look}"
     done = python("-c", code)

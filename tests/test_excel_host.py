@@ -319,6 +319,20 @@ def test_long_ranges_within_the_sheet_are_read_whole() -> None:
     assert len(got) == 12_000
 
 
+def test_cells_that_excel_does_not_let_read_are_an_error_value_with_its_reason(profile: Path) -> None:
+    """Where reading a range fails, the cell shows #VALUE!, the log says which argument, and no exception leaves."""
+
+    class Busy(Range):
+        @property
+        def Value(self) -> object:
+            raise com.ComError("Excel is busy")
+
+    held = Busy(Sheet(), 1, 1, 2, 1)
+    assert call("moment_at", "fixed 8 pinned", "udl 12", held) == VALUE
+    assert "x: these cells cannot be read (ComError: Excel is busy)" in log()
+    assert "cannot be read" in call("fault", held, "udl 12")
+
+
 # --- what must never leave ------------------------------------------------------------------------
 
 

@@ -96,7 +96,10 @@ class _AsItStands(Accessor):
 
 def _read(context: Any) -> None:
     if context.range is not None:
-        context.value = _values(context.range.api)
+        try:
+            context.value = _values(context.range.api)
+        except Exception as error:  # Excel may refuse to be read
+            context.value = unreadable(f"these cells cannot be read ({type(error).__name__}: {error})")
 
 
 def _values(reference: Any) -> object:

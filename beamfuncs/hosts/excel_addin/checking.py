@@ -12,12 +12,10 @@ from beamfuncs.hosts.excel_addin import machine, macros, server, settings, windo
 from beamfuncs.hosts.excel_addin.addin import Addin, read_addin
 from beamfuncs.hosts.excel_addin.findings import Finding
 from beamfuncs.hosts.excel_addin.places import PROJECT, Places
-from beamfuncs.hosts.excel_addin.templates import template
 from beamfuncs.hosts.excel_addin.vba import MODULE, module_text
 from beamfuncs.hosts.excel_addin.vbaproject import NotRead, declarations
 
 INSTALL = "run `beamfuncs excel install`"
-SHIPPED = "addin/xlwings.xlam"
 
 
 def findings(places: Places, environment: Mapping[str, str] = os.environ) -> list[Finding]:
@@ -31,7 +29,6 @@ def findings(places: Places, environment: Mapping[str, str] = os.environ) -> lis
         *_settings_findings(places, found, python),
         _startup(places),
         *_addin(places),
-        _other_addin(places),
         *macros.findings(),
         _synchronised(python or machine.interpreter(), environment),
         *([_server(python, found)] if python else []),
@@ -120,7 +117,10 @@ def _functions(found: Addin, module: Path) -> Finding:
         return Finding("functions", f"{len(wanted)} in the add-in")
     told = "; ".join(
         f"{what}: {', '.join(names)}"
-        for what, names in (("not in the add-in (#NAME?)", lacking), ("with other arguments (#VALUE!)", differing))
+        for what, names in (
+            ("not in the add-in (#NAME?)", lacking),
+            ("with other arguments (#VALUE! or a wrong number)", differing),
+        )
         if names
     )
     mend = f"the module is of another version: {INSTALL}, remove {MODULE} from the add-in, and import {module} anew"
@@ -145,18 +145,6 @@ def _download_mark(path: Path) -> Finding:
     return Finding("download mark", told, f"right-click {path} > Properties > Unblock")
 
 
-def _other_addin(places: Places) -> Finding:
-    what, path = "xlwings' own add-in", places.startup / "xlwings.xlam"
-    try:
-        same = path.read_bytes() == template(SHIPPED).read_bytes()
-    except FileNotFoundError:
-        return Finding(what, "not in the startup folder; only the macro workbook would need it")
-    if same:
-        return Finding(what, f"{path}, the one of xlwings {machine.pinned()}")
-    told = f"{path} is not the one of xlwings {machine.pinned()}; only the macro workbook needs it"
-    return Finding(what, told, "close Excel and run `xlwings addin install`, which replaces it")
-
-
 # --- around it ------------------------------------------------------------------------------------
 
 
@@ -177,5 +165,8 @@ def _server(python: Path, found: dict[str, str]) -> Finding:
         return Finding(
             "server", "answers a function (called without COM, over which Excel calls it: that is not tried)"
         )
-    mend = "pip install --force-reinstall beamfuncs in that environment; if this line stays, send this diagnosis"
+    mend = (
+        "in the folder of beamfuncs, pip install --force-reinstall . with that Python, Excel closed; if this line"
+        " stays, send this diagnosis"
+    )
     return Finding("server", f"{python}: {fault} (#VALUE! in every cell)", mend)

@@ -28,7 +28,7 @@ STILL = """\
 Where every cell shows #NAME? all the same: File > Options > Add-ins > Manage: Disabled Items. Where every cell shows
 #VALUE!: Alt+F8, BeamFuncsFailure, which says why Python did not answer."""
 
-app = typer.Typer(no_args_is_help=True)
+app = typer.Typer(help="The functions in Excel (Windows): install, check, uninstall.", no_args_is_help=True)
 
 
 @app.command()

@@ -18,7 +18,7 @@ from beamfuncs.hosts.excel_addin.places import PROJECT, Places
 from beamfuncs.hosts.excel_addin.receipt import Receipt, read_receipt
 from beamfuncs.hosts.excel_addin.templates import template
 from beamfuncs.hosts.excel_addin.vba import module_text
-from beamfuncs.hosts.excel_addin.vbaproject import NotRead
+from beamfuncs.hosts.excel_addin.vbaproject import NotRead, declarations
 from beamfuncs.hosts.headless import writing
 
 TEMPLATE = "quickstart_addin.xlam"
@@ -30,7 +30,7 @@ class NotInstalled(ValueError):
 
 @dataclass(frozen=True)
 class Installed:
-    """What was done, a line each, and whether the module with the functions is still to be imported by hand."""
+    """What was done, a line each, and whether the module with the functions is to be imported by hand."""
 
     lines: tuple[str, ...]
     to_import: bool
@@ -51,7 +51,7 @@ def install(places: Places, given: Path | None = None) -> Installed:
     receipt, kept = _put_addin(places, receipt, source, new, replaces=given is not None)
     _put_settings(places, receipt, python)
     write_module(places.module)
-    to_import = not read_addin(places.addin).complete
+    to_import = read_addin(places.addin).functions != declarations(module_text())
     return Installed((f"add-in: {places.addin}", *kept, f"settings: {places.settings}"), to_import)
 
 

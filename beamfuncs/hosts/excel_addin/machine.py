@@ -70,6 +70,9 @@ def findings(python: Path) -> list[Finding]:
 def _python(python: Path) -> Finding:
     told = f"{platform.python_version()}, {windows.own_bitness()} bits, {python}"
     place = f"make the environment at {ENVIRONMENT}, or at {{}} if your user name is in the way"
+    if "windowsapps" in sys.base_prefix.casefold():
+        told += ": it comes from the Microsoft Store, and what it writes into AppData no other program sees"
+        return Finding("Python", told, "make the environment with a Python from python.org")
     try:
         windows.ansi(str(python))
     except UnicodeEncodeError as error:

@@ -41,9 +41,9 @@ Option Explicit
 
 Private lastFailure As String
 
-' Say why Python did not answer, where every cell shows #VALUE!.
+' Say why Python did not answer, where every cell shows #VALUE!. A box holds some 1000 letters, and the reason is last.
 Public Sub BeamFuncsFailure()
-    MsgBox IIf(lastFailure = "", "Python has answered so far.", lastFailure), vbInformation, "{MODULE}"
+    MsgBox IIf(lastFailure = "", "Python has answered so far.", Right$(lastFailure, 1000)), vbInformation, "{MODULE}"
 End Sub
 
 ' Name the add-in by its folder on this machine, in a workbook that names it by the folder of another.
@@ -112,16 +112,19 @@ End Function
 _OPENING = """\
 ' The texts of the function wizard. Excel gives none to a hidden workbook, so the add-in is shown for that moment.
 Public Sub Auto_Open()
+    Dim unchanged As Boolean
     On Error Resume Next
+    unchanged = ThisWorkbook.Saved
     Application.ScreenUpdating = False
     If ThisWorkbook.IsAddin Then
         ThisWorkbook.IsAddin = False
+        ThisWorkbook.Windows(1).Visible = True
         DescribeAll
         ThisWorkbook.IsAddin = True
-        ThisWorkbook.Saved = True
     Else
         DescribeAll
     End If
+    ThisWorkbook.Saved = unchanged
     Application.ScreenUpdating = True
 End Sub
 

@@ -32,6 +32,7 @@ _PLAIN = re.compile(
 _QUOTED = re.compile(r""""(?:[^"]|"")*"|'(?:[^']|'')*'""")
 _MOVING = re.compile(r"(?<![$\w.])(?:[A-Z]{1,3}\$?[0-9]+|\$[A-Z]{1,3}[0-9]+)\b(?!\()", re.IGNORECASE)
 _BUILT_IN = "_xlnm."
+_TRUE = "1", "true"
 
 
 class Name(NamedTuple):
@@ -78,7 +79,7 @@ def defined_names(workbook: bytes) -> Iterator[Name]:
         if not element.tag.endswith("}definedName"):
             continue
         name, text = element.get("name", ""), (element.text or "").strip()
-        if not text or name.startswith(_BUILT_IN) or element.get("function"):
+        if not text or name.startswith(_BUILT_IN) or element.get("function") in _TRUE:
             continue
         sheet = element.get("localSheetId")
         if sheet is not None and not (sheet.isdecimal() and int(sheet) < len(sheets)):

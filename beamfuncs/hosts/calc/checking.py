@@ -1,0 +1,74 @@
+"""Whether beam functions can work in the user's Calc: finding by finding, each with what to do where it fails."""
+
+from __future__ import annotations
+
+import platform
+from collections.abc import Iterator
+from dataclasses import dataclass
+from importlib.metadata import version
+from pathlib import Path
+
+from beamfuncs.hosts.calc import installing, offices
+from beamfuncs.hosts.calc.component.beamfuncs_client import places
+from beamfuncs.hosts.calc.component.beamfuncs_client.client import Functions
+from beamfuncs.hosts.calc.component.beamfuncs_client.messages import Failed
+
+QUESTION = ("reaction", ["fixed 8 pinned", "udl 12", 1.0])
+"""What the server is asked; by statics and Bernoulli's beam 5/8 of the load, 60."""
+
+
+@dataclass(frozen=True)
+class Finding:
+    """What was looked at, what was found, and, where that will not do, what to do."""
+
+    what: str
+    told: str
+    remedy: str = ""
+
+    @property
+    def is_well(self) -> bool:
+        """Whether nothing needs to be done."""
+        return not self.remedy
+
+
+def findings(office: offices.Office | None, profile: Path) -> Iterator[Finding]:
+    """Look at one thing after the other."""
+    yield Finding("beamfuncs", f"{version('beamfuncs')}, Python {platform.python_version()}, {platform.platform()}")
+    yield from _of_office(office)
+    yield _of_extension(profile)
+    yield _of_server()
+    yield Finding("logs", f"{places.log()}, {places.log().with_name('office.log')}")
+
+
+def _of_office(office: offices.Office | None) -> Iterator[Finding]:
+    if office is None:
+        remedy = "install LibreOffice (no Flatpak or Snap: they are shut in), or say where it is: --office FOLDER"
+        yield Finding("office", "LibreOffice is not found", remedy)
+        return
+    yield Finding("office", f"{office.version}, in {office.program}")
+    if office.python is None:
+        remedy = "install it (Debian, Ubuntu: python3-uno and libreoffice-script-provider-python)"
+        yield Finding("its Python", "the office's support of Python is not found", remedy)
+    else:
+        yield Finding("its Python", str(office.python))
+
+
+def _of_extension(profile: Path) -> Finding:
+    found, wanted = installing.installed(profile), version("beamfuncs")
+    if found is None:
+        return Finding("extension", f"not installed in {profile}", "run `beamfuncs calc install`")
+    if found != wanted:
+        remedy = "run `beamfuncs calc install`, then restart LibreOffice"
+        return Finding("extension", f"{found}, but the package is {wanted}, in {profile}", remedy)
+    return Finding("extension", f"{found}, in {profile}")
+
+
+def _of_server() -> Finding:
+    functions = Functions(version("beamfuncs"))
+    try:
+        answer = functions.call(*QUESTION)
+    except Failed as failed:
+        return Finding("function server", failed.reason, "run `beamfuncs calc install`; the logs may tell more")
+    finally:
+        functions.close()
+    return Finding("function server", f"answers {answer:g} to reaction of {QUESTION[1]}; the right answer is 60")
