@@ -42,6 +42,8 @@ from beamfuncs.notation import (
 from beamfuncs.results import check_field, check_forces, forces_need, read_phrase
 from beamfuncs.sentences import beam_sentence, loads_sentence
 from beamfuncs.solving import adverse, solved
+from beamfuncs.unknown import SIDES as SIDES_OF_ROOTS
+from beamfuncs.unknown import solve_unknown
 
 Rows: TypeAlias = list[list[float | BeamError]]
 """An array result: rows of numbers; an entry that cannot be answered is the error that says why."""
@@ -587,6 +589,71 @@ def influence_line(beam: Argument, phrase: Argument, points: Argument = None, st
     return [list(row) for row in _influence_line(beam, phrase, stiffness).rows(_number_of(points))]
 
 
+# --- solving for an unknown -----------------------------------------------------------------------------
+
+
+@worksheet_function
+def solve_for(
+    beam: Argument,
+    loads: Argument,
+    phrase: Argument,
+    target: Argument,
+    stiffness: Argument = None,
+    combination: Argument = None,
+    low: Argument = None,
+    high: Argument = None,
+    which: Argument = None,
+) -> float:
+    """Return the number in the place of a question mark, in beam, loads or stiffness, that brings a result to a target.
+
+    Parameters
+    ----------
+    target
+        What the result is to be, e.g. a resistance, or 1/300 for 'deflection max over length'.
+    low
+        Where the search begins. Blank: 0.001.
+    high
+        Where the search ends. Blank: 1e15.
+    which
+        'smallest' or 'largest' of several answers. Blank: smallest.
+
+    Returns
+    -------
+    A length, a place, a size or a stiffness; the result at it is the target to the last digits.
+
+    Raises
+    ------
+    BeamError
+        `#VALUE!` where an argument cannot be read or is missing, `#NUM!` where a number or the range is out of order,
+        `#N/A` where no number in the range brings the result to the target.
+
+    Notes
+    -----
+    A scan of forty trials in each power of ten, or 401 in a narrow range; between two of them the root is closed in on
+    by Brent's method. Answers nearer to each other than two trials may be missed: give a narrow range.
+
+    Examples
+    --------
+    >>> round(solve_for("pinned ? roller", "udl 12", "moment max", 96), 9)
+    8.0
+    >>> round(solve_for("pinned 6 roller", "udl 8", "deflection max over length", 1 / 360, "?"), 6)
+    8100.0
+    """
+    side = _one_cell("which", which)
+    word = next(iter(SIDES_OF_ROOTS)) if not_given(side) else str(side).strip().lower()
+    if word not in SIDES_OF_ROOTS:
+        raise unreadable(f"which: {quoted(side)}; write {' or '.join(SIDES_OF_ROOTS)}")
+    ends = _number_or_none("low", low), _number_or_none("high", high)
+    return solve_unknown(
+        (frozen("beam", beam), frozen("loads", loads), frozen("stiffness", stiffness)),
+        read_combination(frozen("combination", combination)),
+        read_phrase(_one_cell("phrase", phrase)),
+        number("target", _one_cell("target", target)),
+        ends,
+        word,
+    )
+
+
 # --- text -----------------------------------------------------------------------------------------
 
 
@@ -797,6 +864,10 @@ def _each(argument: str, cells: Argument, answer: Callable[[str, Cell], float]) 
     if is_range(cells):
         return each(argument, cells, answer)
     return answer(argument, _one_cell(argument, cells))
+
+
+def _number_or_none(argument: str, value: Argument) -> float | None:
+    return None if not_given(frozen(argument, value)) else number(argument, _one_cell(argument, value))
 
 
 def _one_whole(argument: str, value: Argument) -> int:

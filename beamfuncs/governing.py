@@ -53,6 +53,11 @@ def check(beam: Adverse, which: int | None) -> None:
 
 @lru_cache(KEPT)
 def _of_one(beam: Adverse, phrase: Phrase, combination: Combination | None, sign: int) -> Governing:
+    found = _unscaled(beam, phrase, combination, sign)
+    return found._replace(value=found.value / phrase.scale(beam.beam))
+
+
+def _unscaled(beam: Adverse, phrase: Phrase, combination: Combination | None, sign: int) -> Governing:
     if phrase.quantity == TOTAL_LOAD:
         if beam.loads.trains:
             raise unreadable("phrase: the total load of a train that moves on and off the beam is not told")

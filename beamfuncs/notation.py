@@ -234,7 +234,17 @@ def read_clauses(loads: Frozen) -> tuple[Clause | Axles, ...]:
 @lru_cache(CACHED, typed=True)
 def read_loads(loads: Frozen, beam: Beam) -> Loads:
     """Return the loads placed on a beam."""
-    clauses = read_clauses(loads)
+    return _placed(read_clauses(loads), beam)
+
+
+def read_anew(beam: Frozen, loads: Frozen, stiffness: Frozen) -> tuple[Beam, Loads]:
+    """Return a beam and its loads without keeping them: for one of very many trials."""
+    line = read_line.__wrapped__(beam)
+    stiff = Beam(line.marks, line.lengths, _stiffness(stiffness, len(line.lengths)))
+    return stiff, _placed(read_clauses.__wrapped__(loads), stiff)
+
+
+def _placed(clauses: tuple[Clause | Axles, ...], beam: Beam) -> Loads:
     placed: list[Load] = []
     part = 0
     for clause in clauses:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterator
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property, lru_cache
 from math import isfinite
 
@@ -17,6 +17,7 @@ from beamfuncs.loads import Loads
 from beamfuncs.stiffness import Solution
 
 REACTION, REACTION_MOMENT, TOTAL_LOAD = "reaction", "reaction moment", "total load"
+OVER_LENGTH = " over length"
 SIGNS = {"max": 1, "min": -1}
 EXAMPLES = (
     "'reaction 2', 'moment at 3', 'shear at 4 left', 'moment max in span 2', 'position of moment max', 'total load'"
@@ -34,6 +35,14 @@ class Phrase:
     side: str | None = None
     sign: int | None = None
     position: bool = False
+    over_length: bool = False
+
+    def scale(self, beam: Beam) -> float:
+        """Return what its result is divided by: 1, or the length of its span or of the beam."""
+        if not self.over_length:
+            return 1.0
+        start, end = beam.extent("phrase", self.span)
+        return end - start
 
     @property
     def of_one_place(self) -> bool:
@@ -130,6 +139,9 @@ class Result:
 
     def answer(self, phrase: Phrase) -> float:
         """Return what a phrase asks for."""
+        return self._answer(phrase) / phrase.scale(self.beam)
+
+    def _answer(self, phrase: Phrase) -> float:
         if phrase.quantity == TOTAL_LOAD:
             return self.total_load
         if phrase.sign is not None:
@@ -224,6 +236,8 @@ def read_phrase(cell: Cell) -> Phrase:
     if not isinstance(cell, str):
         raise unreadable(f"phrase: the number {cell:g}; write e.g. {EXAMPLES}")
     text = " ".join(cell.lower().split())
+    if text.endswith(OVER_LENGTH):
+        return replace(read_phrase(text.removesuffix(OVER_LENGTH)), over_length=True)
     if text == TOTAL_LOAD:
         return Phrase(TOTAL_LOAD)
     if found := _REACTION.fullmatch(text):
