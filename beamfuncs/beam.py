@@ -8,7 +8,7 @@ from functools import cached_property
 from itertools import accumulate, pairwise
 from math import inf, isfinite
 
-from beamfuncs.errors import absent, impossible, unreadable
+from beamfuncs.errors import BeamError, absent, impossible, unreadable
 
 RIGID = inf
 
@@ -187,8 +187,7 @@ class Beam:
         if not isfinite(x):
             raise impossible(f"{argument}: place {x:g} is not finite")
         if not -self.near <= x <= end - start + self.near:
-            whole = f"beam (length {self.length:.12g})" if span is None else f"span {span} (length {end - start:.12g})"
-            raise absent(f"{argument}: place {x:.12g} is not on the {whole}")
+            raise not_on(argument, x, span, end - start)
         return min(max(start + x, start), end)
 
     def mark_at(self, x: float) -> int | None:
@@ -199,6 +198,12 @@ class Beam:
     def length_at(self, x: float) -> int:
         """Return the index of the length on which `x` lies; at a mark, of the one to its right."""
         return min(bisect_right(self.x, x + self.near), len(self.lengths)) - 1
+
+
+def not_on(argument: str, x: float, span: int | None, length: float) -> BeamError:
+    """Return the error of a place that does not lie on a beam, or on a span, of that length."""
+    whole = "beam" if span is None else f"span {span}"
+    return absent(f"{argument}: place {x:.12g} is not on the {whole} (length {length:.12g})")
 
 
 def _count(number: int, noun: str) -> str:

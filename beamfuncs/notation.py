@@ -199,10 +199,15 @@ def _wanted_stiffness(stiffness: Frozen) -> str:
     return wanted
 
 
+def may_be_thousands(text: str) -> bool:
+    """Tell whether a text holds what may be one number with a blank in it, or several: `24 500`."""
+    return _THOUSANDS.search(text) is not None
+
+
 def _stiffness_words(stiffness: Frozen) -> Iterator[str | float]:
     for cell in flat(stiffness):
         if isinstance(cell, str):
-            if _THOUSANDS.search(cell):
+            if may_be_thousands(cell):
                 raise unreadable(
                     f"stiffness: {quoted(cell)} may be one number with a blank in it, or several; write 24500 without a"
                     " blank, or 24. 500. for two"
@@ -239,9 +244,14 @@ def read_loads(loads: Frozen, beam: Beam) -> Loads:
 
 def read_anew(beam: Frozen, loads: Frozen, stiffness: Frozen) -> tuple[Beam, Loads]:
     """Return a beam and its loads without keeping them: for one of very many trials."""
-    line = read_line.__wrapped__(beam)
-    stiff = Beam(line.marks, line.lengths, _stiffness(stiffness, len(line.lengths)))
+    stiff = read_anew_beam(beam, stiffness)
     return stiff, _placed(read_clauses.__wrapped__(loads), stiff)
+
+
+def read_anew_beam(beam: Frozen, stiffness: Frozen) -> Beam:
+    """Return a beam with its stiffness without keeping it."""
+    line = read_line.__wrapped__(beam)
+    return Beam(line.marks, line.lengths, _stiffness(stiffness, len(line.lengths)))
 
 
 def _placed(clauses: tuple[Clause | Axles, ...], beam: Beam) -> Loads:

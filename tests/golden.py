@@ -157,6 +157,30 @@ PATTERNS = "G: udl 4; Q: udl 10 each span; Q: point 30 at 2.2 each load"
 TRAIN = "T: axles 80 80 40 spaced 1.2 3.2 both ways"
 FREE_PHRASES: Argument = [["reaction 2", "moment at 3"], ["shear at support 2 left", "deflection at 1 in span 2"]]
 PLACES_ON_FREE: Argument = [[0.0], [2.2], [12.7]]
+LINES: Argument = [
+    ["fixed 8 pinned"],
+    ["fixed 6.5 pinned"],
+    ["fixed 4 pinned"],
+    ["fixed 5.1 pinned"],
+    ["pinned 5 free"],
+]
+LOADS_OF_LINES: Argument = [
+    ["G: udl 5; Q: point 40 at 3"],
+    ["G: udl 5.5; Q: point 44 at 3.3"],
+    ["G: udl 6; Q: point 48 at 4.4"],
+    ["G: udl 6.5; Q: point 52 at 2.2"],
+    ["G: udl 7"],
+]
+STIFFNESS_OF_LINES: Argument = [[24000.0], [25000.0], ["EI 26000; GA 5e5"], [None], [24000.0]]
+OVER: Argument = [
+    ["L", "q", "EI", "g", "end"],
+    [8.0, 12.0, 24000.0, 1.35, "fixed"],
+    [7.5, 12.5, 24000.0, 1.35, "pinned"],
+    [7.0, 13.0, 24000.0, 1.0, "fixed"],
+    [6.5, 13.5, 31000.0, 1.35, "fixed"],
+    [-6.0, 14.0, 31000.0, 1.35, "fixed"],
+    [5.5, 14.5, 31000.0, 1.35, "free"],
+]
 ACTIONS: Argument = [["G", "permanent"], ["Q", "office"], ["W", "wind"]]
 
 GOLDEN: tuple[Row, ...] = (
@@ -322,6 +346,18 @@ GOLDEN: tuple[Row, ...] = (
     call("influence_line", FREE_BEAM, "reaction moment 1", None, 24000.0),
     call("influence_line", FREE_BEAM, "slope at 3", 5.0, 24000.0),
     call("influence_line", FREE_BEAM, "moment max"),
+    # many beams at once
+    call("sweep", LINES, "udl 12", "moment max"),
+    call("sweep", LINES, TABLE, [["reaction 1", "moment at 3", "deflection max"]], 24000.0),
+    call("sweep", LINES, LOADS_OF_LINES, [["reaction 1", "moment max"]], None, COMBINED),
+    call("sweep", LINES, LOADS_OF_LINES, [["reaction 1", "slope max"]], STIFFNESS_OF_LINES, "1.35 G + 1.5 Q"),
+    call("sweep", PROPPED, "udl 12", [["reaction 1", "moment at 9", "reaction 4", "total loads"]]),
+    call("sweep", LINES, CLAUSES, "moment max"),
+    call("sweep", [["fixed 8 pinned"], [REF], ["free 8 free"], [None]], "udl 12", [["reaction 1", "moment max"]]),
+    call("sweep_over", "fixed {L} pinned", "udl {q}", [["reaction 1", "moment max"]], OVER),
+    call("sweep_over", "fixed {L} pinned", "udl {q}", "deflection max over length", OVER, "EI {EI}"),
+    call("sweep_over", "{end} {L} pinned", "G: udl {q}", "moment min", OVER, None, "{g} G"),
+    call("sweep_over", "fixed {L} pinned", "udl {q}", "moment max", [["L"], [8.0]]),
     # text
     call("beam_line", "fix", 6.5, "pin"),
     call("beam_line", "fix", 6.5, "pin", 2.75, "hinge 1.25 roller"),
