@@ -6,6 +6,7 @@ import random
 import re
 import tracemalloc
 from collections.abc import Iterator
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -354,6 +355,17 @@ def test_a_million_texts_of_one_form_are_one_form() -> None:
 
     peak(1000)
     assert peak(1000) < 8 * count + 4_000_000
+
+
+def test_the_example_of_the_readme_runs(capsys: pytest.CaptureFixture[str]) -> None:
+    """It finds the span whose hogging moment, (1.35 * 5 + 1.5 * 60 / L) L² / 8, is 120, and tells progress."""
+    readme = (Path(__file__).parent.parent / "README.md").read_text(encoding="utf-8")
+    code = readme.split("```python\n")[1].split("```")[0]
+    found: dict[str, object] = {}
+    exec(code, found)
+    # 6.75 L² + 90 L = 960
+    assert abs(found["permissible"] - (np.sqrt(90.0**2 + 4 * 6.75 * 960) - 90.0) / (2 * 6.75)) < 1e-4  # type: ignore[operator]
+    assert capsys.readouterr().out.endswith("100000 of 100000\n")
 
 
 # --- roots -----------------------------------------------------------------------------------------------

@@ -72,8 +72,11 @@ def _of_quadratic(c: Array, b: Array, a: Array) -> list[Array]:
 
 def _bracketed(polynomial: tuple[Array, ...], h: Array, way: int) -> list[Array]:
     """Return the roots between the roots of the derivative, where a polynomial rises or falls all the way."""
-    turns = [np.where((s > 0.0) & (s < h), s, h) for s in roots(derivative(polynomial), h)]
-    places = [np.zeros_like(h), *np.sort(np.stack(turns), axis=0), h]
+    places = [np.zeros_like(h)]
+    for s in roots(derivative(polynomial), h):
+        # What is no root leaves an interval of no extent.
+        places.append(np.fmin(np.fmax(s, places[-1]), h))
+    places.append(h)
     values = [polynomial[0], *(evaluate(polynomial, s) for s in places[1:])]
     found = []
     for n, (a, b) in enumerate(pairwise(places)):

@@ -155,7 +155,7 @@ class Beams:
 
     def sound(self) -> Flags:
         """Tell of each beam whether its lengths and stiffnesses are in range."""
-        good: Flags = (within(self.lengths) & (self.lengths > self.near)).all(axis=0)
+        good: Flags = np.all(within(self.lengths) & (self.lengths > self.near), axis=0)
         if self.shape.beam.stiffness:
             good &= within(self.EI).all(axis=0)
         if self.GA is not None:

@@ -22,6 +22,8 @@ Progress: TypeAlias = Callable[[int, int], None]
 """Told how many rows are done, and of how many."""
 Columns: TypeAlias = Mapping[str, Sequence[object] | Array]
 
+NAMES = ("beam", "loads", "stiffness", "combination")
+
 CHUNK = 32_768
 """Rows that are read together."""
 BLOCK = 4_096
@@ -65,7 +67,8 @@ def sweep(
     >>> sweep(["fixed 8 pinned", "fixed 4 pinned"], "udl 12", ["reaction 1", "moment max"]).values.tolist()
     [[60.0, 54.0], [30.0, 13.5]]
     """
-    lines = _column("beams", beams)
+    line = _cells("beams", beams, None)
+    lines: list[object] = [line.value] if isinstance(line, _One) else line
     count = len(lines)
     asked = _phrases(phrases)
     given: list[list[object] | _One] = [
@@ -111,10 +114,11 @@ def sweep_over(
     >>> sweep_over("fixed {L} pinned", "udl {q}", "moment max", {"L": [8, 4], "q": [12, 6]}).values.tolist()
     [[54.0], [6.75]]
     """
+    parts = [frozen(name, part) for name, part in zip(NAMES, (beam, loads, stiffness, combination), strict=True)]
     columns = _named_columns(values)
     count = len(next(iter(columns.values()), ()))
     asked = _phrases(phrases)
-    form = _Form.of((beam, loads, stiffness, combination), columns)
+    form = _Form.of(parts, columns)
     swept = Swept(np.full((count, len(asked)), np.nan))
     for start in range(0, count, chunk):
         stop = min(start + chunk, count)
@@ -182,8 +186,7 @@ def _singly(swept: Swept, rows: Indices, asked: list[Asked], one: Callable[[int]
 def _row(one: Callable[[int], tuple[object, ...]], row: int, asked: list[Asked]) -> list[float | BeamError]:
     """Return the answers of one row as the other functions give them."""
     try:
-        names = ("beam", "loads", "stiffness", "combination")
-        beam, loads, stiffness, combination = (frozen(*pair) for pair in zip(names, one(row), strict=True))
+        beam, loads, stiffness, combination = (frozen(*pair) for pair in zip(NAMES, one(row), strict=True))
         line, placed = read_anew(beam, loads, stiffness)
         factors = placed.factors(read_combination.__wrapped__(combination))
         result = Result.of(solve(line, placed), factors)
@@ -213,23 +216,18 @@ def _listed(cells: object) -> list[object]:
     return listed
 
 
-def _column(name: str, cells: object) -> list[object]:
+def _column(name: str, listed: list[object]) -> list[object]:
     """Return the cells of a column; a plain list or an array of one dimension is a column too."""
-    if not is_range(cells):
-        return [cells]
-    listed = _listed(cells)
     if not any(is_range(row) for row in listed):
         return listed
     rows = [_listed(row) if is_range(row) else [row] for row in listed]
-    if len(rows) == 1:
-        return rows[0]
     if any(len(row) != 1 for row in rows):
         raise unreadable(f"{name}: a range of several columns; give one column, a cell for each beam")
     return [row[0] for row in rows]
 
 
-def _cells(name: str, cells: object, count: int) -> list[object] | _One:
-    """Return a column of as many cells as there are beams, or what counts for all of them."""
+def _cells(name: str, cells: object, count: int | None) -> list[object] | _One:
+    """Return a column of as many cells as there are beams, or what counts for all of them: a cell, a row, a table."""
     if not is_range(cells):
         return _One(frozen(name, cells))
     listed = _listed(cells)
@@ -237,6 +235,8 @@ def _cells(name: str, cells: object, count: int) -> list[object] | _One:
     if wide and (len(listed) == 1 or is_load_table(frozen(name, cells))):
         return _One(frozen(name, cells))
     column = _column(name, listed)
+    if count is None:
+        return column
     if len(column) == 1:
         return _One(frozen(name, column[0]))
     if len(column) != count:
@@ -331,13 +331,12 @@ class _Form:
     fixed: tuple[str, ...]
 
     @classmethod
-    def of(cls, parts: tuple[object, ...], columns: dict[str, list[object] | Array]) -> _Form:
+    def of(cls, parts: list[Frozen], columns: dict[str, list[object] | Array]) -> _Form:
         """Return the form of the arguments; names that stand for texts or count something are `fixed` in a shape."""
-        names = ("beam", "loads", "stiffness", "combination")
-        texts_of = [frozen(name, part) for name, part in zip(names, parts, strict=True)]
+        texts_of = list(parts)
         used: list[str] = []
         fixed: dict[str, None] = {}
-        for n, (name, text) in enumerate(zip(names, texts_of, strict=True)):
+        for n, (name, text) in enumerate(zip(NAMES, parts, strict=True)):
             if isinstance(text, tuple):
                 if any(isinstance(cell, str) and _NAME.search(cell) for cell in flat(text)):
                     if name != "loads" or is_load_table(text):
