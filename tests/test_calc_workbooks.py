@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import re
+import shutil
 import zipfile
 from collections.abc import Iterator
 from pathlib import Path
@@ -123,6 +124,31 @@ def test_a_workbook_of_another_program_is_live(calc: CalcOffice, tmp_path: Path,
         assert calc.read(book, "A10") == [[18.0]]
     assert calc.read(book, "C1:C2") == [[0.0], [12.0]]
     calc.close(book)
+
+
+@pytest.mark.parametrize("formula", ["=Missing*2", "=Absent!A1", "=New"])
+def test_unknown_names_keep_what_is_stored(
+    calc: CalcOffice, colleague: CalcOffice, tmp_path: Path, formula: str
+) -> None:
+    """A cell with a name or sheet that Calc does not know, or a name for what it does not, shows its stored value."""
+    path = schedule(tmp_path / "plain.xlsx", True)
+    book = openpyxl.load_workbook(path)
+    book.worksheets[0]["F1"] = formula
+    book.defined_names["New"] = DefinedName("New", attr_text="_xlfn.NEWER(Sheet!$A$1)")
+    book.save(path)
+    with zipfile.ZipFile(path) as archive:
+        parts = {name: archive.read(name) for name in archive.namelist()}
+    xml = parts["xl/worksheets/sheet1.xml"]
+    parts["xl/worksheets/sheet1.xml"] = re.sub(rb'(<c r="F1"[^>]*><f>[^<]*</f>)<v ?/>', rb"\g<1><v>77</v>", xml)
+    with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED) as archive:
+        for name, content in parts.items():
+            archive.writestr(name, content)
+    copy = Path(shutil.copy(path, tmp_path / "copy.xlsx"))
+    for office, opened in ((colleague, colleague.open(copy)), (calc, calc.open(path))):
+        assert office.read(opened, "F1") == [[77.0]]
+        if office is calc:
+            assert calc.read(opened, "A3") == [[60.0]]
+        office.close(opened)
 
 
 def test_other_cells_are_not_touched(calc: CalcOffice, colleague: CalcOffice, tmp_path: Path) -> None:
@@ -340,9 +366,11 @@ def test_a_colleague_sees_the_values(calc: CalcOffice, colleague: CalcOffice, tm
     assert colleague.read(book, "A5")[0][0][0] == 525
     colleague.close(book)
     frozen, count = rewriting.freeze(ods)
-    assert (frozen.name, count) == ("saved.frozen.ods", 4)
+    assert (frozen.name, count) == ("saved.frozen.ods", 5)
     for office in (colleague, calc):
         book = office.open(frozen)
-        assert shown(office, book) == {**SHOWN, "A10": shown(office, book)["A10"]}
+        assert shown(office, book) == SHOWN
+        office.enter(book, {"G1": "=SUM(C2:C3)"})
+        assert seen(office.read(book, "G1")) == [["#VALUE!"]]
         assert office.note(book, "A3") == "beamfuncs computed this value from =reaction([.A1];[.B1];1)"
         office.close(book)
