@@ -151,19 +151,25 @@ def _elements(container: Any) -> List[Any]:
 
 @contextmanager
 def _quietly(document: Any) -> Iterator[None]:
-    """Compute once at the end, draw nothing meanwhile, keep no undo, and leave the document marked as it was."""
-    automatic = document.isAutomaticCalculationEnabled()
+    """Draw nothing, keep no undo and the heights of rows, and leave the document marked as it was.
+
+    It computes by itself meanwhile, as a cell of an array that is looked at while it does not is given the value of the
+    array's first cell, and keeps it. For the heights of rows the office would look at their cells, again and again.
+    """
+    automatic, heights = document.isAutomaticCalculationEnabled(), document.IsAdjustHeightEnabled
     undo = document.getUndoManager()
     document.disableSetModified()
     document.addActionLock()
-    document.enableAutomaticCalculation(False)
+    document.enableAutomaticCalculation(True)
+    document.IsAdjustHeightEnabled = False
     undo.lock()
     try:
         yield
-    finally:
-        undo.unlock()
-        document.enableAutomaticCalculation(automatic)
         if not automatic:
             document.calculate()  # the cells entered alone: all others are as they were saved
+    finally:
+        undo.unlock()
+        document.IsAdjustHeightEnabled = heights
+        document.enableAutomaticCalculation(automatic)
         document.removeActionLock()
         document.enableSetModified()
