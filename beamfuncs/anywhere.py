@@ -21,6 +21,7 @@ from numpy.polynomial import Polynomial
 from numpy.typing import NDArray
 
 from beamfuncs.beam import Beam
+from beamfuncs.errors import impossible
 from beamfuncs.fields import DEFLECTION, LEFT, MOMENT, RIGHT, SHEAR, SLOPE, derivative, roots
 from beamfuncs.influence import Section, influence_lines
 from beamfuncs.loads import Factors
@@ -197,7 +198,9 @@ def _largest(cells: Sequence[Cell]) -> tuple[Cell, tuple[float, float]]:
         bounds = (values @ to_bernstein).max(axis=1)
         open_ = bounds > best + CLOSE * scale
         if open_.sum() > MOST_TRIANGLES:
-            break
+            raise impossible(
+                "beam: the place of the extreme under the train cannot be told; ask for a place, 'at' an x"
+            )
         triangles, of_cell = _halved(triangles[open_], of_cell[open_])
     return cells[found], point
 

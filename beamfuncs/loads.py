@@ -230,6 +230,8 @@ class Clause:
         if self.each != "span":
             yield LOAD_KINDS[self.kind].place(self, beam)
         elif self.at is not None or self.start is not None:
+            if not beam.spans:
+                raise absent(f"{self.where}: 'each span' with a place is counted in a span, and this beam has none")
             for span in range(1, len(beam.spans) + 1):
                 yield from replace(self, each=None, span=span).on(beam)
         else:

@@ -15,6 +15,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from numpy.typing import NDArray
 
+from beamfuncs.errors import BeamError
 from beamfuncs.functions import (
     beam_result,
     diagram,
@@ -521,3 +522,16 @@ def test_reactions_of_loads_without_a_case() -> None:
     header, *rows = reaction_cases("pinned 6 roller", "udl 4; point 6 at 3; Q: udl 2")
     assert header == ["support", "x", "result", "loads", "Q"]
     assert rows == [[1.0, 0.0, "reaction", 15.0, 6.0], [2.0, 6.0, "reaction", 15.0, 6.0]]
+
+
+def test_a_lane_with_two_factors_may_be_absent() -> None:
+    """Its train may be off the beam: a favourable factor forces no lane load onto stretches where it relieves."""
+    call = "pinned 6 pinned 6 pinned", "T: axles 10 lane udl 9", "moment at 3"
+    assert highest(*call, "1.5/1.0 T") == pytest.approx(highest(*call, "1.5 T"), rel=1e-12)
+
+
+def test_a_place_in_each_span_needs_a_span() -> None:
+    """A cantilever has none: the load would be nowhere without a word."""
+    with pytest.raises(BeamError, match="this beam has none") as caught:
+        highest("fixed 4 free", "point 4 at 3 each span", "reaction 1")
+    assert caught.value.value == "#N/A"

@@ -127,15 +127,15 @@ BRIDGES = {
     ),
     "overhangs": Bridge(
         *("free 1.5 pinned 6 pinned 2 free", 24000, "udl 3", (50.0, 30.0), (2.0,), False),
-        ("0", "0.75", "1.5", "4.5", "8.25", "9.5"),
+        ("0", "1.5", "4.5", "9.5"),
     ),
     "built in, hinge": Bridge(
         *("fixed 4 hinge 3 pinned 5 fixed", 15000, "udl 2; point 10 at 6", (40.0, 70.0, 20.0), (1.5, 2.5), False),
-        ("0", "2", "4", "7", "12.0"),
+        ("0", "4", "7"),
     ),
     "step, springs, shear flexibility": Bridge(
         *("spring(900, 400) 3 step 5 spring(2500) 6 guided", "EI 2e4 3e4 2.5e4; GA 4e4", "udl 0"),
-        *((90.0, 45.0), (1.8,), False, ("0", "3", "8", "11", "14.0")),
+        *((90.0, 45.0), (1.8,), False, ("0", "8", "14.0")),
     ),
     "an axle that lifts": Bridge("pinned 7 pinned 4 free", 1e4, "udl 1", (30.0, -20.0), (2.5,), False, ("3", "7", "9")),
     "one axle": Bridge("fixed 6 free", 1e4, "couple 5 at 3", (30.0,), (), True, ("0", "3", "6.0")),
