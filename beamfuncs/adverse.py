@@ -151,4 +151,4 @@ class Adverse:
 def _lane(line: InfluenceLine, train: Train, factors: Factors, sign: int) -> float:
     if not train.lane:
         return 0.0
-    return sign * sum(max(sign * factor * train.lane * area for factor in factors) for area in line.areas)
+    return sign * sum(max(sign * factor * train.lane * area for factor in (*factors, 0.0)) for area in line.areas)

@@ -21,6 +21,7 @@ from numpy.polynomial import Polynomial
 from numpy.typing import NDArray
 
 from beamfuncs.beam import Beam
+from beamfuncs.errors import impossible
 from beamfuncs.fields import DEFLECTION, LEFT, MOMENT, RIGHT, SHEAR, SLOPE, derivative, roots
 from beamfuncs.influence import Section, influence_lines
 from beamfuncs.loads import Factors
@@ -38,6 +39,8 @@ MOST_TRIANGLES = 100_000
 NEWTON_STEPS = 5
 NODES = 16
 """Places tried in a stretch where a search is all that is possible."""
+PEAKS = 8
+"""How many of the places that are larger than their neighbours it closes in on."""
 
 
 class Cell(NamedTuple):
@@ -74,7 +77,10 @@ def place(
                 cells += _cells(lines, e, a, b, along, forces, np.array(offsets))
     cell, near = _largest(cells)
     s = _sharpened(cell, near)
-    return beam.x[cell.element] + s, LEFT if s >= max(s for s, _ in cell.corners) - beam.near else RIGHT
+    left, right = min(s for s, _ in cell.corners), max(s for s, _ in cell.corners)
+    if s >= right - beam.near:
+        return beam.x[cell.element] + right, LEFT
+    return beam.x[cell.element] + (s if s > left + beam.near else left), RIGHT
 
 
 def _along(
@@ -192,7 +198,9 @@ def _largest(cells: Sequence[Cell]) -> tuple[Cell, tuple[float, float]]:
         bounds = (values @ to_bernstein).max(axis=1)
         open_ = bounds > best + CLOSE * scale
         if open_.sum() > MOST_TRIANGLES:
-            break
+            raise impossible(
+                "beam: the place of the extreme under the train cannot be told; ask for a place, 'at' an x"
+            )
         triangles, of_cell = _halved(triangles[open_], of_cell[open_])
     return cells[found], point
 
@@ -214,10 +222,16 @@ def _sharpened(cell: Cell, near: tuple[float, float]) -> float:
         tried += [start + u * (end - start) for u in (0.0, *stationary)]
     inner = _stationary(cell.polynomial, near)
     best = tried[int(np.argmax(value(np.array(tried))))]
-    scale = np.abs(corners[:, 0]).max()
-    if inner is not None and abs(inner[0] - near[0]) < 1e-4 * scale and value(inner[None])[0] >= value(best[None])[0]:
+    if inner is not None and _inside(inner, corners) and value(inner[None])[0] >= value(best[None])[0]:
         best = inner
     return float(best[0])
+
+
+def _inside(point: Array, corners: Array) -> bool:
+    """Tell whether a point is in a convex polygon: to the same side of all its edges."""
+    edges, to = np.roll(corners, -1, axis=0) - corners, point - corners
+    turns = edges[:, 0] * to[:, 1] - edges[:, 1] * to[:, 0]
+    return bool((turns >= 0.0).all() or (turns <= 0.0).all())
 
 
 def _stationary(polynomial: Array, near: tuple[float, float]) -> Array | None:
@@ -303,11 +317,12 @@ def _searched(
         adverse.prepare([Section(which, at, side) for at, side in places])
         values = [value(at, side) for at, side in places]
         for n, ((at, side), found) in enumerate(zip(places, values, strict=True)):
-            neighbours = places[max(n - 1, 0)][0], places[min(n + 1, len(places) - 1)][0]
-            tried.append((found, at, side, *neighbours))
+            before, after = max(n - 1, 0), min(n + 1, len(places) - 1)
+            if found >= max(values[before], values[after]):
+                tried.append((found, at, side, places[before][0], places[after][0]))
     tried.sort(key=lambda one: -one[0])
     best = tried[0][:3]
-    for _, _, _, low, high in tried[:3]:
+    for _, _, _, low, high in tried[:PEAKS]:
         closer = minimize_scalar(
             lambda x: -value(x, RIGHT), bounds=(low, high), method="bounded", options={"xatol": 1e-9}
         )

@@ -218,9 +218,10 @@ def _polynomials(
     V, M, phi, v = start
     deflection = [v, phi, -(M / EI + kappa) / 2, -V / (6 * EI), q / (24 * EI), dq / (120 * EI)]
     if GA is not None:
-        deflection[1] += V / GA
-        deflection[2] -= q / (2 * GA)
-        deflection[3] -= dq / (6 * GA)
+        # Not in place: these may be vectors, an entry a column, and `phi` is the slope's own.
+        deflection[1] = phi + V / GA
+        deflection[2] = deflection[2] - q / (2 * GA)
+        deflection[3] = deflection[3] - dq / (6 * GA)
     return (
         (V, -q, -dq / 2),
         (M, V, -q / 2, -dq / 6),

@@ -169,4 +169,5 @@ def _trains(beam: Adverse, governing: Governing) -> Iterator[str]:
         else:
             others = "" if len(train.axles) == 1 else f", the others to its {'left' if position.reversed else 'right'}"
             off = ", an axle just off the end of the beam" if position.just_off else ""
-            yield f"{name}: first axle at x = {position.first_axle:.6g}{others}{off}"
+            lane = ", its lane load where adverse" if train.lane else ""
+            yield f"{name}: first axle at x = {position.first_axle:.6g}{others}{off}{lane}"

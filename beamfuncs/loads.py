@@ -123,6 +123,10 @@ Load: TypeAlias = Distributed | Point | Couple | Settlement | Rotation | Curvatu
 is present where it is adverse and absent elsewhere."""
 
 
+MOST_AXLES = 100
+"""Each axle is held against each break of an influence line: more would take minutes and gigabytes."""
+
+
 @dataclass(frozen=True)
 class Train:
     """Axles that move along the beam together [force], the first at the left unless it goes the other way.
@@ -158,6 +162,8 @@ class Axles:
     example: ClassVar[str] = "axles 80 80 40 spaced 1.2 3.2"
 
     def __post_init__(self) -> None:
+        if len(self.axles) > MOST_AXLES:
+            raise impossible(f"{self.where}: {len(self.axles)} axles; a train has at most {MOST_AXLES}")
         for size in (*self.axles, self.lane):
             _check_size(self.where, size)
         if len(self.spacings) != len(self.axles) - 1:
@@ -224,6 +230,8 @@ class Clause:
         if self.each != "span":
             yield LOAD_KINDS[self.kind].place(self, beam)
         elif self.at is not None or self.start is not None:
+            if not beam.spans:
+                raise absent(f"{self.where}: 'each span' with a place is counted in a span, and this beam has none")
             for span in range(1, len(beam.spans) + 1):
                 yield from replace(self, each=None, span=span).on(beam)
         else:

@@ -339,18 +339,18 @@ def _clause(where: str, text: str) -> Clause | Axles:
 def _axles(words: _Words, case: str | None) -> Axles:
     axles = words.numbers("the load of an axle")
     spacings = words.numbers("a distance between axles") if words.take("spaced") else []
-    both_ways, lane = False, 0.0
+    both_ways, lane = False, None
     while words.left:
-        if words.take("both", "ways"):
+        if not both_ways and words.take("both", "ways"):
             both_ways = True
-        elif words.take("lane", "udl"):
+        elif lane is None and words.take("lane", "udl"):
             lane = words.number("the load of the lane")
         else:
             raise unreadable(
                 f"{words.where}: {quoted(words.left[0], 30)} in {quoted(words.text)} is not understood; write e.g."
                 f" '{Axles.example} both ways lane udl 9'"
             )
-    return Axles(words.where, tuple(axles), tuple(spacings), both_ways, lane, case)
+    return Axles(words.where, tuple(axles), tuple(spacings), both_ways, lane or 0.0, case)
 
 
 def _load_kind(where: str, word: str) -> str:

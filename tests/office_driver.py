@@ -103,6 +103,10 @@ class Driver:
         """Whether the first sheet is protected."""
         return bool(self._sheet(book, 0).isProtected())
 
+    def calculate(self, book: int) -> None:
+        """Compute the formulas whose cells have changed."""
+        self.books[book].calculate()
+
     def recalculate(self, book: int) -> float:
         """Compute every formula; return the seconds that it took."""
         began = time.perf_counter()

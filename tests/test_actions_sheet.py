@@ -216,7 +216,7 @@ def test_what_governs_gives_the_value_again(sheet: Worksheet, row: int) -> None:
     for part in told:
         for start, end in re.findall(r"([\d.]+) to ([\d.]+)", part if " on " in part else ""):
             loads.append(f"udl {factors['Q'] * Q} from {start} to {end}")
-        train = re.fullmatch(r"T: first axle at x = ([-\d.]+), the others to its (left|right)", part)
+        train = re.match(r"T: first axle at x = ([-\d.]+), the others to its (left|right)", part)
         if train:
             sign = 1 if train[2] == "right" else -1
             at = [float(train[1]) + sign * offset for offset in OFFSETS]

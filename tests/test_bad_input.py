@@ -161,7 +161,48 @@ LOADS_READ = [
     ([["load", "size", "span"], ["udl", 12, 1.5]], VALUE, "not a whole number"),
     ([["load", "size"], ["udl", math.nan]], NUM, "not finite"),
     ("y" * 40_000, VALUE, "is not a load"),
+    ("udl 12 each", VALUE, "'each' in"),
+    ("udl 12 each beam", VALUE, "'each' in"),
+    ("udl 12 each span each load", VALUE, "twice"),
+    ("udl 12 in span 1 each span", VALUE, "'each span' and one span or support exclude each other"),
+    ("point 3 at support 1 each span", VALUE, "exclude each other"),
+    ("point 40 each span", VALUE, "needs one place"),
+    ("point 40 at 9 each span", NA, "not on the span 1 (length 8)"),
+    ("udl 4 from 1 to 9 each span", NA, "ends beyond the span 1"),
+    ("udl 12 both ways", VALUE, "'both' in"),
+    ([["load", "size", "each"], ["udl", 5, "spans"]], VALUE, "write span or load"),
+    ([["load", "size", "each", "span"], ["udl", 5, "span", 1]], VALUE, "exclude each other"),
+    ("axles", VALUE, "ends where the load of an axle is due"),
+    ("axles spaced 2", VALUE, "'spaced' is not a number"),
+    ("axles 80 spaced", VALUE, "ends where a distance between axles is due"),
+    ("axles 80 spaced 2", VALUE, "1 axles with 1 distances"),
+    ("axles 80 80", VALUE, "write e.g. 'axles 80 80 40 spaced 1.2 3.2'"),
+    ("axles 80 80 spaced 1 2", VALUE, "2 axles with 2 distances"),
+    ("axles 80 80 spaced 0", NUM, "more than 0"),
+    ("axles 80 80 spaced -1.2", NUM, "more than 0"),
+    ("axles 80 80 spaced 1,2", VALUE, "write decimals with a point"),
+    ("axles 80,5", VALUE, "write decimals with a point"),
+    ("axles eighty", VALUE, "'eighty' is not a number"),
+    ("axles 1e61", NUM, "check the units"),
+    ("axles 80 lane udl 1e-61", NUM, "check the units"),
+    ("axles 80 lane udl", VALUE, "ends where the load of the lane is due"),
+    ("axles 80 lane 9", VALUE, "lane udl 9"),
+    ("axles 80 lane udl 9 lane udl 8", VALUE, "'lane' in"),
+    ("axles 80 both ways both ways", VALUE, "'both' in"),
+    ("axles 80 80 spaced 1.2 both", VALUE, "'both' in"),
+    ("axles 80 at 3", VALUE, "'at' in"),
+    ("axles 80 each span", VALUE, "'each' in"),
+    ("axles" + " 80" * 101 + " spaced" + " 1" * 100, NUM, "at most 100"),
 ]
+
+FREE = [
+    ("udl 12 each span", VALUE, "ask for the highest or the lowest"),
+    ("udl 12 each load", VALUE, "ask for the highest or the lowest"),
+    ("G: udl 5; Q: point 40 at 3 each span", VALUE, "ask for the highest or the lowest"),
+    ("udl 5; axles 80", VALUE, "ask for the highest or the lowest"),
+    ([["load", "size", "each"], ["udl", 5, "load"]], VALUE, "ask for the highest or the lowest"),
+]
+"""Loads that act only where they are adverse, which no function can place without being asked for what."""
 
 SUPPORTS = [
     (None, VALUE, "blank"),
@@ -233,6 +274,50 @@ COMBINATIONS = [
     ("1e308 G + 1e308 G", NUM, "more than a number can hold"),
     ([["G", "Q"]], VALUE, "a range"),
     (True, VALUE, "truth value"),
+    *(
+        (text, VALUE, "'1.35 G + 1.5 Q'")
+        for text in ("1.35/ G", "/1.0 G", "1.35/1.0/0.9 G", "1.35/1.0", "1.35/G", "1.35//1.0 G")
+    ),
+    ("1.35/1.0 G + G", VALUE, "names G twice"),
+    ("G + 1.35/1.0 G", VALUE, "names G twice"),
+    ("1.35/1e400 G", NUM, "larger than a number can hold"),
+]
+"""What is no combination, in any function."""
+
+SINGLE = [row for row in COMBINATIONS if not isinstance(row[0], list)]
+"""The same without the range, which is a list of combinations for other functions."""
+
+ONE_FACTOR = [("1.35/1.0 G", VALUE, "give one, or ask for the highest or the lowest")]
+"""What is none where one answer is asked for."""
+
+LISTS = [
+    (1.5, VALUE, "write one text"),
+    ([["1.35 G"], [3]], VALUE, "the number 3"),
+    ([["1.35 G", "G Q"]], VALUE, "'1.35 G + 1.5 Q'"),
+    ([["1.35 G"], [True]], VALUE, "row 2, column 1: TRUE is a truth value"),
+    ([["1.35 G"], [ErrorValue("#REF!")]], "#REF!", "mend that cell"),
+]
+
+SOUGHT = [
+    ("position of moment max", VALUE, "'governing' tells where"),
+    ("moment min", VALUE, "not that of the opposite extreme"),
+    ("moment min in span 1", VALUE, "not that of the opposite extreme"),
+    ("total load", VALUE, "the total load of a train"),
+]
+"""Phrases that have no highest value under a train."""
+
+SIDES_ASKED = [
+    ("up", VALUE, "write highest or lowest"),
+    (3, VALUE, "write highest or lowest"),
+    (True, VALUE, "truth value"),
+    ([["highest", "lowest"]], VALUE, "give one cell"),
+]
+
+POINTS = [
+    (1, NUM, "give from 2 to 100000"),
+    (1e6, NUM, "give from 2 to 100000"),
+    (2.5, VALUE, "not a whole number"),
+    ("many", VALUE, "not a whole number"),
 ]
 
 PHRASES = [
@@ -258,6 +343,14 @@ PHRASES = [
     ("moment at support 5", NA, "the beam has 2 supports"),
 ]
 
+ONE_PLACE = [
+    *(row for row in PHRASES if " max" not in str(row[0])),
+    ("moment max in span 1", VALUE, "belongs to one place"),
+    ("position of moment max", VALUE, "belongs to one place"),
+    ("total load", VALUE, "belongs to one place"),
+]
+"""Phrases that have no influence line."""
+
 UNITS = [
     (("kN", "m"), VALUE, "different dimensions"),
     (("lb/ft", "kN/m"), VALUE, "a force is lbf"),
@@ -273,6 +366,19 @@ UNITS = [
     (("kN;m", "kN m"), VALUE, "no known unit"),
 ]
 
+ORDINARY: list[Any] = [
+    lambda loads: f.reaction(BEAM, loads, 1),
+    lambda loads: f.reactions(BEAM, loads),
+    lambda loads: f.moment_at(BEAM, loads, 3),
+    lambda loads: f.moment_max(BEAM, loads),
+    lambda loads: f.beam_result(BEAM, loads, "total load"),
+    lambda loads: f.diagram(BEAM, loads),
+    lambda loads: f.contraflexure(BEAM, loads),
+]
+"""Functions that give the one answer of loads that are there."""
+
+ADVERSE: list[Any] = [f.highest, f.lowest, f.governing]
+
 TABLES: list[tuple[Any, list[Any]]] = [
     (lambda beam: f.reaction(beam, LOADS, 1, EI), BEAMS),
     (lambda loads: f.moment_max(BEAM, loads, None, EI), LOADS_READ),
@@ -283,6 +389,24 @@ TABLES: list[tuple[Any, list[Any]]] = [
     (lambda combination: f.shear_max(BEAM, "G: udl 12; Q: udl 3", None, EI, combination), COMBINATIONS),
     (lambda phrase: f.beam_result(BEAM, LOADS, phrase, EI), PHRASES),
     (lambda units: f.unit_factor(*units), UNITS),
+    *((function, FREE) for function in ORDINARY),
+    (lambda combination: f.reaction(BEAM, "G: udl 12", 1, EI, combination), ONE_FACTOR),
+    *((lambda one, ask=ask: ask(BEAM, "G: udl 12", "reaction 1", one, EI), SINGLE) for ask in ADVERSE),
+    *((lambda one, ask=ask: ask(BEAM, "G: udl 12", "reaction 1", one, EI), LISTS) for ask in ADVERSE),
+    (lambda one: f.envelope(BEAM, "G: udl 12", one, None, EI), LISTS),
+    *((lambda beam, ask=ask: ask(beam, LOADS, "reaction 1", None, EI), BEAMS) for ask in ADVERSE),
+    *((lambda loads, ask=ask: ask(BEAM, loads, "reaction 1", None, EI), LOADS_READ) for ask in ADVERSE),
+    *((lambda phrase, ask=ask: ask(BEAM, LOADS, phrase, None, EI), PHRASES) for ask in ADVERSE),
+    *((lambda phrase, ask=ask: ask(BEAM, "axles 80", phrase, None, EI), SOUGHT) for ask in (f.highest, f.governing)),
+    (lambda stiffness: f.highest(BEAM, LOADS, "deflection max", None, stiffness), STIFFNESSES),
+    (lambda side: f.governing(BEAM, LOADS, "reaction 1", None, EI, side), SIDES_ASKED),
+    (lambda points: f.envelope(BEAM, LOADS, None, points, EI), POINTS),
+    (lambda points: f.influence_line(BEAM, "reaction 1", points, EI), POINTS),
+    (lambda beam: f.influence(beam, "moment at 0", 0, EI), BEAMS),
+    (lambda phrase: f.influence(BEAM, phrase, 3, EI), ONE_PLACE),
+    (lambda phrase: f.influence_line(BEAM, phrase, 3, EI), ONE_PLACE),
+    (lambda x: f.influence(BEAM, "reaction 1", x), PLACES),
+    (lambda loads: f.reaction_cases(BEAM, loads, EI), LOADS_READ),
 ]
 CASES = [(call, *row) for call, table in TABLES for row in table]
 
@@ -334,10 +458,41 @@ def test_a_missing_stiffness_is_named_where_the_result_depends_on_it(call: Any, 
     assert caught.value.value == VALUE
 
 
+@pytest.mark.parametrize(
+    ("call", "needs"),
+    [
+        (lambda: f.highest(BEAM, "udl 3 each span", "deflection max"), "deflection needs it"),
+        (lambda: f.lowest(BEAM, "axles 3", "slope at 0"), "slope needs it"),
+        (lambda: f.governing("spring(100) 4 pinned 4 pinned", "axles 3", "reaction 1"), "springs"),
+        (lambda: f.highest(BEAM, "settle 0.01 at support 1 each load", "reaction 1"), "imposed settlements"),
+        (lambda: f.influence(BEAM, "deflection at 3", 3), "deflection needs it"),
+        (lambda: f.influence_line("fixed 3 step 5 pinned", "reaction 1"), "a step of the stiffness"),
+        (lambda: f.envelope("spring(100) 4 pinned 4 pinned", "udl 3"), "springs"),
+        (lambda: f.reaction_cases("fixed 3 step 5 pinned", "udl 3"), "a step of the stiffness"),
+    ],
+)
+def test_a_missing_stiffness_is_named_where_an_extreme_depends_on_it(call: Any, needs: str) -> None:
+    """The same of the functions over patterns and positions."""
+    test_a_missing_stiffness_is_named_where_the_result_depends_on_it(call, needs)
+
+
+def test_fault_takes_loads_that_act_where_they_are_adverse() -> None:
+    """What `highest` can answer has no fault; what it cannot has the reason that it gives."""
+    assert f.fault(BEAM, "G: udl 3 each span; Q: axles 80 lane udl 9", None, "1.35/1.0 G + 1.5 Q") == ""
+    assert f.fault(BEAM, "G: udl 3", None, "1.35/1.0 G") == ""
+    assert "has no case" in f.fault(BEAM, "udl 3 each span", None, "1.35 G")
+    assert "springs" in f.fault("spring(100) 4 pinned 4 pinned", "axles 80")
+    assert "mechanism" in f.fault("pinned 8 free", "axles 80")
+    assert "axles with" in f.fault(BEAM, "axles 80 80")
+
+
 def test_a_load_without_a_case_beside_a_combination_is_an_error() -> None:
     """A combination cannot say by how much a load without a case counts."""
     with pytest.raises(BeamError, match="loads, load 2: has no case"):
         f.reaction(BEAM, "G: udl 5; udl 3", 1, None, "1.35 G")
+    for loads in ("G: udl 5; udl 3 each span", "G: udl 5; axles 80"):
+        with pytest.raises(BeamError, match="loads, load 2: has no case"):
+            f.highest(BEAM, loads, "reaction 1", "1.35 G")
 
 
 def test_one_value_among_blanks_is_not_spread_over_the_lengths() -> None:
@@ -352,6 +507,7 @@ ENDLESS = [
     "x" * LONG,
     "1," * (LONG // 2),
     " ".join("9" * 900),
+    "axles " + "1 " * 8000 + "spaced " + "1 " * 7999,
     "spring(" * 4000,
     "a " * 9000,
     "*" * LONG,
@@ -415,6 +571,16 @@ def test_a_truth_value_is_no_number_even_where_the_number_is_cached() -> None:
 WORDS = st.text(alphabet=" ;:()+*-.,e0123GQ", max_size=6) | st.sampled_from(
     [
         *(*MARK_KINDS, *LOAD_KINDS, *HEADERS, *FIELDS, *STIFFNESS_TERMS),
+        *(
+            "axles 80",
+            "axles 8 4 spaced 1",
+            "both ways",
+            "lane udl 9",
+            "each span",
+            "each load",
+            "1.35/1.0 G",
+            "spaced",
+        ),
         *("load", "case", "in", "support 1", "in span 1", "max", "min", "position of", "total load", "reaction"),
         *(
             "left",

@@ -178,6 +178,18 @@ def test_a_file_is_whole_or_as_it_was(tmp_path: Path, monkeypatch: pytest.Monkey
     assert os.listdir(tmp_path) == ["saved.xlsx"]
 
 
+def test_nobody_else_reads_it_meanwhile(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """While a file that is the user's alone is written anew, what is beside it is the user's alone too."""
+    path = as_calc_writes(tmp_path / "saved.xlsx")
+    path.chmod(0o600)
+    modes: set[int] = set()
+    monkeypatch.setattr(
+        saving.os, "fsync", lambda _: modes.update(stat.S_IMODE(one.stat().st_mode) for one in tmp_path.iterdir())
+    )
+    assert saving.put_plain_names(str(path), LONG)
+    assert modes == {0o600}
+
+
 def test_the_command_refuses_what_is_open(tmp_path: Path) -> None:
     """A workbook that is open in an office, or is none of the Excel kind, is not rewritten."""
     path = as_calc_writes(tmp_path / "saved.xlsx")
@@ -220,6 +232,43 @@ def test_frozen_cells() -> None:
         f"<table:table-cell {value}>{noted}<text:p>60</text:p></table:table-cell>"
         f"<table:table-cell>{note.partition('=')[0]}=fault([.A1])</text:p></office:annotation></table:table-cell>"
     )
+
+
+def test_frozen_arrays() -> None:
+    """Each error of an array that gives way stays one, so that SUM passes it on; those of another array are its own."""
+    error = '<table:table-cell office:value-type="string" calcext:value-type="error"'
+    size = 'table:number-matrix-columns-spanned="1" table:number-matrix-rows-spanned="3"'
+    ours, theirs = (
+        f'<table:table-cell {size} table:formula="of:={f}" office:value="1"/>' for f in ("shear(1)", "[.Z1]")
+    )
+    ours = ours.replace("shear(1)", f"{PREFIX}MOMENTAT(1)")
+    shown = "><text:p>#N/A</text:p></table:table-cell>"
+    blank = '<table:table-cell table:number-columns-repeated="2"/>'
+    below = f"<table:table-row>{blank}{error}{shown}{error}{shown}</table:table-row>"
+    content = (
+        f'<table:table table:name="S"><table:table-row>{blank}{ours}{theirs}</table:table-row>{below}{below}{below}'
+    )
+    frozen, count = freezing.frozen(content.encode())
+    assert count == 1
+    kept = error.replace("<table:table-cell", '<table:table-cell table:formula="of:=#N/A"') + shown
+    changed = f"<table:table-row>{blank}{kept}{error}{shown}</table:table-row>"
+    assert frozen.decode().endswith(f"{theirs}</table:table-row>{changed}{changed}{below}")
+
+
+def test_frozen_by_way_of_names() -> None:
+    """A cell that calls a function by way of a formula with a name holds its value alone, like one that calls it."""
+    names = "".join(
+        f'<table:named-expression table:name="{name}" table:expression="{formula}"/>'
+        for name, formula in {"Twice": "2*Far", "Far": f"{PREFIX}REACTION([$S.$A$1])", "Other": "2*[$S.$A$1]"}.items()
+    )
+    cells = [
+        f'<table:table-cell table:formula="of:={one}" office:value="1"><text:p>1</text:p>'
+        for one in ("Twice+1", "FAR", "Other", "Farther", "&quot;Far&quot;")
+    ]
+    frozen, count = freezing.frozen(("".join(cells) + names).encode())
+    assert count == 2
+    assert frozen.decode().endswith("".join(cells[2:]) + names)
+    assert b"from =Twice+1<" in frozen
 
 
 # --- the commands ---------------------------------------------------------------------------------------

@@ -13,7 +13,7 @@ from calc_office import XLSX, CalcOffice, running
 from openpyxl.workbook.defined_name import DefinedName
 from openpyxl.worksheet.formula import ArrayFormula
 from test_addin_links import MINE, OTHER, linked
-from test_calc_workbooks import in_file
+from test_calc_workbooks import check_crossed, crossed, in_file
 from unfilled import stored
 
 from beamfuncs.hosts.calc.component import linking
@@ -56,7 +56,7 @@ def from_excel(path: Path, kind: bytes, formulas: dict[str, str]) -> Path:
     with zipfile.ZipFile(path) as archive:
         parts = {name: archive.read(name) for name in archive.namelist()}
     sheet_part, link_part = "xl/worksheets/sheet1.xml", "xl/externalLinks/_rels/externalLink2.xml.rels"
-    parts[sheet_part] = re.sub(rb"(</f>)<v ?/>", rf"\g<1><v>{STORED}</v>".encode(), parts[sheet_part])
+    parts[sheet_part] = re.sub(rb"(</f>)<v(?: ?/>|></v>)", rf"\g<1><v>{STORED}</v>".encode(), parts[sheet_part])
     assert parts[sheet_part].count(b"<v>5.0</v>") == len(formulas) + 1
     parts[link_part] = parts[link_part].replace(LINK, kind)
     assert kind in parts[link_part]
@@ -113,6 +113,16 @@ def test_links_to_other_files_are_left(calc: CalcOffice, tmp_path: Path, kind: b
     formulas = in_file(tmp_path / "saved.xlsx")
     assert formulas["D1"] == "[1]!reaction(&quot;fixed 8 pinned&quot;,&quot;udl 12&quot;,1)"
     assert formulas["D2"] == "1+[1]!other(B1)"
+
+
+@pytest.mark.parametrize("unknown", [False, True])
+def test_arrays_in_the_rows_of_calls(calc: CalcOffice, tmp_path: Path, unknown: bool) -> None:
+    """Every cell of an array shows its own value, also in rows where calls by way of the add-in are entered anew."""
+    path = linked(tmp_path / "crossed.xlsx", {"N1": "=[1]!other(B1)"} if unknown else {}, OTHER, MINE)
+    book = openpyxl.load_workbook(path)
+    crossed(book.worksheets, "[2]!")
+    book.save(path)
+    check_crossed(calc, path, 8.0)
 
 
 @pytest.mark.parametrize(

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import re
+import shutil
 import zipfile
 from collections.abc import Iterator
 from pathlib import Path
@@ -14,6 +15,7 @@ from calc_office import ODS, XLSX, CalcOffice, running
 from openpyxl.styles import Font
 from openpyxl.workbook.defined_name import DefinedName
 from openpyxl.worksheet.formula import ArrayFormula
+from openpyxl.worksheet.worksheet import Worksheet
 from test_calc_functions import seen
 from unfilled import Value, stored, without_values
 
@@ -84,16 +86,93 @@ def schedule(path: Path, unknown: bool = False) -> Path:
     if unknown:
         sheet["F1"] = "=_xlfn.NEWER(A1,{})"
     book.save(path)
+    store(path, {"A3": 5, "A4": 5, "F1": 77})
+    return path
+
+
+def store(path: Path, values: dict[str, float]) -> None:
+    """Store values beside formulas of a workbook's first sheet, where there are such."""
     with zipfile.ZipFile(path) as archive:
         parts = {name: archive.read(name) for name in archive.namelist()}
     xml = parts["xl/worksheets/sheet1.xml"].decode()
-    for place, value in (("A3", 5), ("A4", 5), ("F1", 77)):
-        xml = re.sub(rf'(<c r="{place}"[^>]*><f>[^<]*</f>)<v ?/>', rf"\g<1><v>{value}</v>", xml)
+    for place, value in values.items():
+        xml = re.sub(rf'(<c r="{place}"[^>]*><f[^>]*>[^<]*</f>)<v(?: ?/>|></v>)', rf"\g<1><v>{value}</v>", xml)
     parts["xl/worksheets/sheet1.xml"] = xml.encode()
     with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED) as archive:
         for name, content in parts.items():
             archive.writestr(name, content)
-    return path
+
+
+ARRAYS = {
+    "C3:C11": "@moment_at(B1,C1,B3:B11)",
+    "E3:E11": "B3:B11*10",
+    "F3:G4": "MMULT({1,0;0,1},{1,2;3,4})",
+    "F5:I6": "@reactions(B1,C1)",
+    "F8:G9": "TRANSPOSE(B3:C4)",
+    "H7:H11": 'B3:B7&" m"',
+    "K3:K11": "@moment_at(B1,C1,B3:B11)",
+}
+"""The array formulas of `crossed`, ours, behind an `@`, and the office's own."""
+OTHER_BEAM = "fixed 10 pinned"
+
+
+def crossed(sheets: list[Worksheet], link: str = "") -> None:
+    """Fill sheets with arrays in whose rows stand calls of ours, before, between and behind them."""
+    for sheet in sheets:
+        sheet["B1"], sheet["C1"] = BEAM, LOADS
+        for row in range(3, 12):
+            sheet[f"B{row}"] = row - 3
+            for column in "ADJ":
+                sheet[f"{column}{row}"] = f"={link}shear_at($B$1,$C$1,B{row})"
+            sheet[f"L{row}"] = f"=C{row}+E{row}"
+        sheet["M5"] = sheet["M9"] = f"={link}moment_max(B1,C1)"
+        sheet["K13"], sheet["L13"] = "=SUM(C3:C11)", "=SUM(E3:G11)"
+        for place, formula in ARRAYS.items():
+            sheet[place.split(":")[0]] = ArrayFormula(place, f"={formula.replace('@', link)}")
+
+
+def crossed_shows(length: float) -> dict[str, list[list[object]]]:
+    """What the formulas of `crossed` show for a beam `fixed length pinned`, by statics and Bernoulli's beam."""
+    near, far, fixing = 7.5 * length, 4.5 * length, -1.5 * length**2
+    shear = [[near - 12 * x] for x in range(9)]
+    moment = [fixing + near * x - 6 * x * x for x in range(9)]
+    greatest = [[27 / 32 * length**2]]
+    in_rows = {f"{column}3:{column}11": shear for column in "ADJ"}
+    in_rows |= {f"{column}3:{column}11": [[one] for one in moment] for column in "CK"}
+    return {
+        **in_rows,
+        "E3:E11": [[10.0 * x] for x in range(9)],
+        "F3:G4": [[1.0, 2.0], [3.0, 4.0]],
+        "F5:I6": [[1.0, 0.0, near, fixing], [2.0, length, far, 0.0]],
+        "F8:G9": [[0.0, 1.0], moment[:2]],
+        "H7:H11": [[f"{x} m"] for x in range(5)],
+        "L3:L11": [[one + 10.0 * x] for x, one in enumerate(moment)],
+        "M5": greatest,
+        "M9": greatest,
+        "K13:L13": [[sum(moment), 360.0 + 10.0 + 3.0 + length + 1.0 + sum(moment[:2])]],
+    }
+
+
+def other_beam(path: Path) -> None:
+    """Change the beam of a workbook in its file, all stored values left as they are."""
+    with zipfile.ZipFile(path) as archive:
+        parts = {name: archive.read(name).replace(BEAM.encode(), OTHER_BEAM.encode()) for name in archive.namelist()}
+    with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED) as archive:
+        for name, content in parts.items():
+            archive.writestr(name, content)
+
+
+def check_crossed(calc: CalcOffice, path: Path, length: float, sheets: int = 1) -> None:
+    """Open a workbook of `crossed`: every cell shows what it must, and does so when its beam is another."""
+    book = calc.open(path)
+    for beam, length_now in ((None, length), ("fixed 12 pinned", 12.0)):
+        for sheet in range(sheets):
+            if beam:
+                calc.enter(book, {"B1": beam}, sheet)
+                calc.calculate(book)
+            for place, expected in crossed_shows(length_now).items():
+                assert calc.read(book, place, sheet) == expected, (place, sheet, beam)
+    calc.close(book)
 
 
 def shown(calc: CalcOffice, book: int) -> dict[str, object]:
@@ -123,6 +202,25 @@ def test_a_workbook_of_another_program_is_live(calc: CalcOffice, tmp_path: Path,
         assert calc.read(book, "A10") == [[18.0]]
     assert calc.read(book, "C1:C2") == [[0.0], [12.0]]
     calc.close(book)
+
+
+@pytest.mark.parametrize("formula", ["=Missing*2", "=Absent!A1", "=New"])
+def test_unknown_names_keep_what_is_stored(
+    calc: CalcOffice, colleague: CalcOffice, tmp_path: Path, formula: str
+) -> None:
+    """A cell with a name or sheet that Calc does not know, or a name for what it does not, shows its stored value."""
+    path = schedule(tmp_path / "plain.xlsx", True)
+    book = openpyxl.load_workbook(path)
+    book.worksheets[0]["F1"] = formula
+    book.defined_names["New"] = DefinedName("New", attr_text="_xlfn.NEWER(Sheet!$A$1)")
+    book.save(path)
+    store(path, {"F1": 77})
+    copy = Path(shutil.copy(path, tmp_path / "copy.xlsx"))
+    for office, opened in ((colleague, colleague.open(copy)), (calc, calc.open(path))):
+        assert office.read(opened, "F1") == [[77.0]]
+        if office is calc:
+            assert calc.read(opened, "A3") == [[60.0]]
+        office.close(opened)
 
 
 def test_other_cells_are_not_touched(calc: CalcOffice, colleague: CalcOffice, tmp_path: Path) -> None:
@@ -327,6 +425,26 @@ def test_a_tall_workbook(calc: CalcOffice, tmp_path: Path, unknown: bool) -> Non
     assert [row[2] for row in rows] == pytest.approx([7.5 * n if n % 2 == 0 else 2.0 * n for n in range(1, 3001)])
 
 
+@pytest.mark.parametrize("manual", [False, True])
+@pytest.mark.parametrize("filled", [False, True])
+@pytest.mark.parametrize("unknown", [False, True])
+def test_arrays_in_the_rows_of_calls(
+    calc: CalcOffice, tmp_path: Path, unknown: bool, filled: bool, manual: bool
+) -> None:
+    """Every cell of an array, ours or the office's own, shows its own value, also in rows where calls are entered."""
+    path = tmp_path / "crossed.xlsx"
+    book = openpyxl.Workbook()
+    crossed([book.worksheets[0], book.create_sheet()])
+    if unknown:
+        book.create_sheet()["A1"] = "=_xlfn.NEWER(B1,{})"
+    book.calculation.calcMode = "manual" if manual else "auto"
+    book.save(path)
+    if filled:
+        fill(path, in_place=True)
+        other_beam(path)
+    check_crossed(calc, path, 10.0 if filled else 8.0, 2)
+
+
 def test_a_colleague_sees_the_values(calc: CalcOffice, colleague: CalcOffice, tmp_path: Path) -> None:
     """Without the extension an .xlsx shows stored values, and a frozen copy of an .ods shows them all, with notes."""
     excel, ods = tmp_path / "saved.xlsx", tmp_path / "saved.ods"
@@ -340,9 +458,11 @@ def test_a_colleague_sees_the_values(calc: CalcOffice, colleague: CalcOffice, tm
     assert colleague.read(book, "A5")[0][0][0] == 525
     colleague.close(book)
     frozen, count = rewriting.freeze(ods)
-    assert (frozen.name, count) == ("saved.frozen.ods", 4)
+    assert (frozen.name, count) == ("saved.frozen.ods", 5)
     for office in (colleague, calc):
         book = office.open(frozen)
-        assert shown(office, book) == {**SHOWN, "A10": shown(office, book)["A10"]}
+        assert shown(office, book) == SHOWN
+        office.enter(book, {"G1": "=SUM(C2:C3)"})
+        assert seen(office.read(book, "G1")) == [["#VALUE!"]]
         assert office.note(book, "A3") == "beamfuncs computed this value from =reaction([.A1];[.B1];1)"
         office.close(book)

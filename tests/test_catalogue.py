@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import inspect
 import keyword
 import re
 
@@ -19,9 +20,21 @@ def test_every_public_function_of_the_module_is_in_the_catalogue() -> None:
     written = {
         name
         for name, value in vars(functions).items()
-        if callable(value) and getattr(value, "__module__", "") == functions.__name__ and not name.startswith("_")
+        if getattr(value, "__worksheet__", False) and not name.startswith("_")
     }
     assert written == set(NAMES)
+
+
+def test_no_function_is_left_unmarked() -> None:
+    """Every public function that the module itself defines is a worksheet function, and so is one that it takes in."""
+    defined = {
+        name
+        for name, value in vars(functions).items()
+        if inspect.isfunction(value) and value.__module__ == functions.__name__ and not name.startswith("_")
+    }
+    assert defined <= set(NAMES)
+    assert "combinations" in NAMES
+    assert "combinations" not in defined
 
 
 @pytest.mark.parametrize("name", NAMES)
@@ -61,8 +74,21 @@ def test_shared_arguments_are_described_once() -> None:
 
 
 def test_arguments_stand_in_one_order_everywhere() -> None:
-    """Beam, loads, what is asked, stiffness, combination."""
-    order = ["beam", "loads", "support", "x", "span", "phrase", "points", "stiffness", "combination"]
+    """Beam, loads, what is asked, combinations, points, stiffness, combination, and which extreme."""
+    order = ["beam", "loads", "support", "phrase", "x", "span", "combinations", "points", "stiffness", "combination"]
+    order.append("side")
+    of_its_own = {"part", "from_unit", "to_unit", "standard", "actions", "leading", "factors"}
     for entry in catalogue().values():
-        known = [a.name for a in entry.arguments if a.name in order]
+        names = [a.name for a in entry.arguments]
+        assert set(names) <= {*order, *of_its_own}
+        known = [name for name in names if name in order]
         assert known == sorted(known, key=order.index)
+        if {"loads", "stiffness", "combination"} & set(names):
+            assert known[0] == "beam"
+
+
+@pytest.mark.parametrize("name", ["highest", "lowest", "governing"])
+def test_extremes_take_their_arguments_alike(name: str) -> None:
+    """One call can be turned into the other by its name alone."""
+    names = [a.name for a in catalogue()[name].arguments]
+    assert names[:5] == ["beam", "loads", "phrase", "combinations", "stiffness"]

@@ -10,7 +10,16 @@ from hypothesis import strategies as st
 from beamfuncs import functions as f
 from beamfuncs.cells import as_text, frozen, number
 from beamfuncs.errors import BeamError
-from beamfuncs.notation import beam_text, clause_text, read_beam, read_clauses, read_combination, read_line, read_loads
+from beamfuncs.notation import (
+    beam_text,
+    clause_text,
+    read_beam,
+    read_clauses,
+    read_combination,
+    read_combinations,
+    read_line,
+    read_loads,
+)
 
 
 @pytest.mark.parametrize(
@@ -70,6 +79,14 @@ def test_a_one_cell_range_is_a_text() -> None:
         ("curvature 1e-4 from 0 to 8", "curvature 0.0001 from 0 to 8"),
         ("udl 1 from 1 to 2 in span 1", "udl 1 from 1 to 2 in span 1"),
         ("Wind_2: udl 3", "Wind_2: udl 3"),
+        ("Q: UDL 12 Each  SPAN; point 3 at 1 each load", "Q: udl 12 each span; point 3 at 1 each load"),
+        ("udl 12 each load in span 2", "udl 12 in span 2 each load"),
+        ("varying 0 to 3 each span from 1 to 2", "varying 0 to 3 from 1 to 2 each span"),
+        ("settle 0.01 at support 2 each load", "settle 0.01 at support 2 each load"),
+        ("axles 80.0", "axles 80"),
+        ("lm: AXLES 80 80 40 SPACED 1.20 3.2 Both Ways", "lm: axles 80 80 40 spaced 1.2 3.2 both ways"),
+        ("axles 80 lane udl 9.0 both ways", "axles 80 both ways lane udl 9"),
+        ("axles -5 3 spaced 1e-3", "axles -5 3 spaced 0.001"),
     ],
 )
 def test_clauses_are_read_and_written_back(written: str, canonical: str) -> None:
@@ -77,6 +94,51 @@ def test_clauses_are_read_and_written_back(written: str, canonical: str) -> None
     assert "; ".join(clause_text(clause) for clause in read_clauses(written)) == canonical
     assert f.load_line(written) == canonical
     assert f.load_line(canonical) == canonical
+
+
+def test_each_span_makes_a_part_of_every_span_and_overhang() -> None:
+    """A load without a place is one on each span and overhang; with a place it is one in each span, counted from its
+    left support; `each load` is one part as a whole, and what is always there is no part."""
+    beam = read_line("free 1 pinned 2 hinge 4 roller 3 step 2 fixed")
+    loads = read_loads("udl 5; udl 3 each span; point 2 at 1 each span; udl 1 each load", beam).loads
+    assert [load.part for load in loads] == [0, 1, 2, 3, 4, 5, 6]
+    assert [(load.start, load.end) for load in loads[1:4]] == [(0.0, 1.0), (1.0, 7.0), (7.0, 12.0)]
+    assert [load.x for load in loads[4:6]] == [2.0, 8.0]
+    assert (loads[6].start, loads[6].end) == (0.0, 12.0)
+
+
+def test_each_stands_in_a_table_too() -> None:
+    """The header `each` holds span or load; a blank is a load that is always there."""
+    beam = read_line("pinned 5 pinned 8 pinned")
+    table = [["load", "Each", "size", "at"], ["udl", " Span", 5, None], ["point", "load", 3, 2], ["udl", None, 1, None]]
+    assert read_loads(frozen("loads", table), beam) == read_loads(
+        "udl 5 each span; point 3 at 2 each load; udl 1", beam
+    )
+    assert f.load_line(table) == "udl 5 each span; point 3 at 2 each load; udl 1"
+
+
+@pytest.mark.parametrize(
+    ("written", "offsets"),
+    [
+        ("axles 80", ((0.0,),)),
+        ("axles 80 both ways", ((0.0,),)),
+        ("axles 80 40 20 spaced 1.5 3", ((0.0, 1.5, 4.5),)),
+        ("axles 80 40 20 spaced 1.5 3 both ways", ((0.0, 1.5, 4.5), (0.0, -1.5, -4.5))),
+    ],
+)
+def test_a_train_stands_to_the_right_of_its_first_axle(written: str, offsets: tuple[tuple[float, ...], ...]) -> None:
+    """Axles are written from the first at the left; both ways it may stand the other way about as well."""
+    [train] = read_loads(written, read_line("pinned 8 roller")).trains
+    assert train.offsets == offsets
+    assert train.lane == 0.0
+
+
+def test_what_is_understood_of_free_loads_and_trains_is_said() -> None:
+    """The sentence tells of loads that act where they are adverse, and of the axles, their way and their lane."""
+    said = f.loads_read("pinned 8 pinned 2 free", "udl 12 each span; Q: axles 80 40 spaced 1.2 both ways lane udl 9")
+    assert "12 from x = 0 to 8 where adverse" in said
+    assert "12 from x = 8 to 10 where adverse" in said
+    assert "Q: moving axles 80 and 40 spaced 1.2, going both ways, with 9" in said
 
 
 TEXT = "G: udl 5; Q: varying 0 to 12 from 2 to 6; Q: point 40 at 1.5 in span 1; W: settle 0.01 at support 2"
@@ -132,7 +194,29 @@ def test_a_position_is_counted_from_the_left_support_of_its_span() -> None:
 )
 def test_combinations_are_read(written: str, expected: dict[str, float]) -> None:
     """A combination is a sum of factors and cases; a factor left out is 1."""
-    assert dict(read_combination(written)) == expected
+    assert {name: factor for name, factor, _ in read_combination(written)} == expected
+    assert {favourable for _, _, favourable in read_combination(written)} == {None}
+
+
+@pytest.mark.parametrize(
+    ("written", "expected"),
+    [
+        ("1.35/1.0 G + 1.5 Q", (("g", 1.35, 1.0), ("q", 1.5, None))),
+        ("1.35 / .9*G-1.5/0Q", (("g", 1.35, 0.9), ("q", -1.5, 0.0))),
+        ("-1.35/1.0 G", (("g", -1.35, -1.0),)),
+    ],
+)
+def test_two_factors_are_read(written: str, expected: tuple[tuple[str, float, float | None], ...]) -> None:
+    """Before the stroke stands the factor where loads are adverse, after it where favourable; a sign is of both."""
+    assert read_combination(written) == expected
+
+
+def test_a_range_of_combinations_is_read_cell_by_cell() -> None:
+    """Blanks are skipped; where all is blank every load counts once."""
+    found = read_combinations(frozen("combinations", [["1.35 G", None], ["", " G + Q "]]))
+    assert [text for text, _ in found] == ["1.35 G", "G + Q"]
+    for blank in (None, "", 0.0, [[None, ""]]):
+        assert read_combinations(frozen("combinations", blank)) == (("every load once", None),)
 
 
 @pytest.mark.parametrize("blank", [None, "", "  ", 0, 0.0, [[None]]])

@@ -425,6 +425,20 @@ def test_a_call_that_hangs(host: Functions, tmp_path: Path, monkeypatch: pytest.
     assert host.call("echo", [1.0]) == 1.0
 
 
+def test_an_answer_that_is_no_longer_awaited(host: Functions, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Where a host is interrupted while it waits, the answer is not taken for that of its next call."""
+
+    def interrupted(_: object) -> None:
+        raise KeyboardInterrupt
+
+    host.call("reaction", [*BEAM, 1])
+    with monkeypatch.context() as patch:
+        patch.setattr(connecting.Line, "receive", interrupted)
+        with pytest.raises(KeyboardInterrupt):
+            host.call("reaction", [*BEAM, 2])
+    assert host.call("reaction", [*BEAM, 1]) == 60.0
+
+
 def test_patience_is_with_silence(host: Functions, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     """Many calls may take longer together than one may be silent: answers come while others are computed."""
     odd({"serving.SILENT": 0.1})

@@ -5,7 +5,6 @@ from __future__ import annotations
 import os
 import re
 import subprocess
-import sys
 import tempfile
 from importlib.metadata import version
 from pathlib import Path
@@ -14,9 +13,8 @@ from beamfuncs.hosts.calc import offices, packing, remote, typelibrary
 from beamfuncs.hosts.calc.component.beamfuncs_client import places
 from beamfuncs.hosts.calc.naming import EXTENSION, FILE_NAME
 from beamfuncs.hosts.calc.offices import Office
+from beamfuncs.hosts.server import starting_command
 
-SERVER = [sys.executable, "-m", "beamfuncs.hosts.server"]
-"""The command that starts the function server: with the Python that runs this."""
 PATIENCE = 300
 """Seconds that the office may take."""
 _VERSION = re.compile(r'<version value="([^"]*)"')
@@ -37,7 +35,7 @@ def install(office: Office, profile: Path) -> None:
         _change(office, profile, "add", str(file))
     if installed(profile) != version("beamfuncs"):
         raise NotInstalled(f"the office took the extension, but it is not in {profile}")
-    places.keep_command(SERVER)
+    places.keep_command(starting_command())
 
 
 def uninstall(office: Office, profile: Path) -> bool:

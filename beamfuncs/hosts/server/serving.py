@@ -10,7 +10,7 @@ import sys
 import threading
 import time
 from collections.abc import Iterator
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from dataclasses import dataclass, field
 from importlib.metadata import version
 from multiprocessing import AuthenticationError
@@ -56,6 +56,8 @@ def serve(idle: float = IDLE) -> int:
     except (places.UnusableError, OSError) as error:
         print(error, file=sys.stderr)
         return UNUSABLE
+    with suppress(OSError):
+        places.forget()  # what a killed server left: the number of its process may be another's by now
     logs.begin()
     try:
         Server(idle).run()

@@ -2,9 +2,9 @@
 
 They become the functions where a formula is compiled anew, and the office compiles all whose names it does not know
 when a name is defined. So a name is defined and taken away again: one step for any number of cells. Where it does not
-know other functions either, this would replace what is stored of those by errors: there our formulas are entered piece
-by piece, and formulas with a name of their own are left. Piece by piece are entered too those that Excel stored by way
-of its add-in, as `[1]!reaction(...)`.
+know other functions, names or sheets either, this would replace what is stored of those by errors: there our formulas
+are entered piece by piece, and formulas with a name of their own are left. Piece by piece are entered too those that
+Excel stored by way of its add-in, as `[1]!reaction(...)`.
 
 No other formula or format is touched, there is nothing to undo, and the workbook counts as unchanged.
 """
@@ -15,7 +15,7 @@ from contextlib import contextmanager
 from math import isqrt
 from typing import Any, Callable, Collection, Iterable, Iterator, List, Sequence, Set, Tuple
 
-from .formulas import calls_to, calls_unknown, unlinked
+from .formulas import calls_to, has_unknown, unlinked
 
 FORMULAS = 16
 """The office's flag for cells that hold formulas."""
@@ -35,17 +35,18 @@ def enter_anew(document: Any, names: Sequence[str], links: Collection[int] = ())
 
     `links` are the numbers of the document's links to the Excel add-in: a name behind one of them counts as plain.
     """
-    ours, unknown, plain_name = calls_to(names), calls_unknown(names), unlinked(names, links)
+    ours, plain_name = calls_to(names), unlinked(names, links)
     sheets = _elements(document.Sheets)
     stored = [block for sheet in sheets for block in _blocks(sheet)]
     blocks = [_spelt(block, plain_name) for block in stored]
     plain = [block for block in blocks if _any(block, ours)]
     linked = [_spelt(block, plain_name) for block in stored if _any(block, lambda one: plain_name(one) != one)]
-    named = [(one, plain_name(one.Content)) for part in (document, *sheets) for one in _elements(part.NamedRanges)]
-    named = [(one, content) for one, content in named if ours("=" + content)]
+    defined = [(one, plain_name(one.Content)) for part in (document, *sheets) for one in _elements(part.NamedRanges)]
+    named = [(one, content) for one, content in defined if ours("=" + content)]
     if plain or named:
+        unknown = has_unknown([*names, *(one.Name for one, _ in defined), *document.DatabaseRanges.ElementNames])
         with _quietly(document):
-            if any(_any(block, unknown) for block in blocks):
+            if any(_any(block, unknown) for block in blocks) or any(unknown(content) for _, content in defined):
                 for block in plain:
                     _enter_pieces(block, ours)
             else:
@@ -150,19 +151,25 @@ def _elements(container: Any) -> List[Any]:
 
 @contextmanager
 def _quietly(document: Any) -> Iterator[None]:
-    """Compute once at the end, draw nothing meanwhile, keep no undo, and leave the document marked as it was."""
-    automatic = document.isAutomaticCalculationEnabled()
+    """Draw nothing, keep no undo and the heights of rows, and leave the document marked as it was.
+
+    It computes by itself meanwhile, as a cell of an array that is looked at while it does not is given the value of the
+    array's first cell, and keeps it. For the heights of rows the office would look at their cells, again and again.
+    """
+    automatic, heights = document.isAutomaticCalculationEnabled(), document.IsAdjustHeightEnabled
     undo = document.getUndoManager()
     document.disableSetModified()
     document.addActionLock()
-    document.enableAutomaticCalculation(False)
+    document.enableAutomaticCalculation(True)
+    document.IsAdjustHeightEnabled = False
     undo.lock()
     try:
         yield
-    finally:
-        undo.unlock()
-        document.enableAutomaticCalculation(automatic)
         if not automatic:
             document.calculate()  # the cells entered alone: all others are as they were saved
+    finally:
+        undo.unlock()
+        document.IsAdjustHeightEnabled = heights
+        document.enableAutomaticCalculation(automatic)
         document.removeActionLock()
         document.enableSetModified()

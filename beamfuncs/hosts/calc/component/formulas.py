@@ -11,6 +11,9 @@ from typing import Callable, Collection, Dict, Iterable, Mapping
 
 _TEXTS = re.compile(r'"[^"]*"|\'[^\']*\'')
 """Texts, and names of sheets, between their marks; a doubled mark inside ends one and begins the next."""
+_COLUMN = re.compile(r"\[(?!\d+\])[^\[\]]*\]")
+"""A column of a table, between its marks."""
+_WORD = re.compile(r"\[\d+\]|(?<![\w.$])[^\W\d][\w.]*")
 
 
 def calls_to(names: Iterable[str]) -> Callable[[str], bool]:
@@ -24,20 +27,37 @@ def calls_to(names: Iterable[str]) -> Callable[[str], bool]:
     return lambda formula: bool(call.search(formula)) and bool(call.search(_TEXTS.sub('""', formula)))
 
 
-def calls_unknown(names: Iterable[str]) -> Callable[[str], bool]:
-    """Return a test of whether a formula calls a function that neither the office knows nor is among these.
+def uses_of(names: Collection[str]) -> Callable[[str], bool]:
+    """Return a test of whether a formula uses one of these defined names.
 
-    The office shows the names of functions that it does not know in small letters. What a numbered link leads to is
-    unknown too.
-
-    >>> test = calls_unknown(["moment_at"])
-    >>> [test(f) for f in ("=moment_at(1)", "=SUM($Sheet1.A1)", "=IF(_xlfn.xlookup(1;A1:A3;B1:B3);1;2)", '="of x(1)"')]
-    [False, False, True, False]
-    >>> test("=[1]!moment_at(1)")
-    True
+    >>> [uses_of(["Far"])(f) for f in ("of:=2*FAR", "of:=Farther", "of:=Far(1)", 'of:="Far"', "of:=[$Far.A1]")]
+    [True, False, False, False, False]
     """
-    known, call = frozenset(names), re.compile(r"\[\d+\]|(?<![\w.$])[a-z_][\w.]*(?=\s*\()")
-    return lambda formula: not known.issuperset(call.findall(_TEXTS.sub('""', formula)))
+    if not names:
+        return lambda formula: False
+    use = re.compile(r"(?<![\w.$])(?:{})(?![\w.(])".format("|".join(map(re.escape, names))), re.IGNORECASE)
+    return lambda formula: bool(use.search(_TEXTS.sub('""', formula)))
+
+
+def has_unknown(known: Iterable[str]) -> Callable[[str], bool]:
+    """Return a test of whether a formula has a function, name or sheet that the office does not know, none of these.
+
+    The office shows in small letters what it does not know, and defined names as they were defined. What a numbered
+    link leads to is unknown too.
+
+    >>> test = has_unknown(["moment_at", "Far", "beams"])
+    >>> [test(f) for f in ("=moment_at(far)", "=SUM($plan.A1)", '="of x(1)"', "=SUM(beams[span])", "=1e-3")]
+    [False, False, False, False, False]
+    >>> [test(f) for f in ("=IF(_xlfn.xlookup(1;A1:A3;B1:B3);1;2)", "=[1]!moment_at(1)", "=missing*2", "=plan9!A1")]
+    [True, True, True, True]
+    """
+    others = frozenset(word.lower() for word in known)
+
+    def test(formula: str) -> bool:
+        words = _WORD.findall(_COLUMN.sub("", _TEXTS.sub('""', formula)))
+        return any(word == word.lower() and word not in others for word in words)
+
+    return test
 
 
 def shortened(names: Mapping[str, str]) -> "Callable[[str], str]":

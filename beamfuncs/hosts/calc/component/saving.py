@@ -54,7 +54,7 @@ def put_plain_names(path: str, names: Mapping[str, str]) -> bool:
             changed = plain_parts(archive.namelist(), archive.read, names)
             if not changed:
                 return False
-            with open(temporary, "xb") as stream:
+            with open(temporary, "xb", opener=_private) as stream:
                 with zipfile.ZipFile(stream, "w", zipfile.ZIP_DEFLATED) as copy:
                     for member in archive.infolist():
                         content = changed.get(member.filename) or archive.read(member)
@@ -67,6 +67,11 @@ def put_plain_names(path: str, names: Mapping[str, str]) -> bool:
         with suppress(OSError):
             os.unlink(temporary)
     return True
+
+
+def _private(path: str, flags: int) -> int:
+    """Open a file that nobody else can read while it is written."""
+    return os.open(path, flags, 0o600)
 
 
 def _like(path: str, model: str) -> None:

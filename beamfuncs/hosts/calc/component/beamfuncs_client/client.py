@@ -95,13 +95,13 @@ class Functions:
                 due = len(answers) + len(piece)
                 while len(answers) < due:
                     answers.extend(_checked(line.receive(), due - len(answers)))
-            except LostError:
-                self._hang_up()
-                raise
             except HungError:
                 self._hang_up()
                 with suppress(UnusableError, OSError):
                     end_hung(line.server)
+                raise
+            except BaseException:  # an answer that is still to come must not be taken for that of a later call
+                self._hang_up()
                 raise
             self._used = time.monotonic()
 
