@@ -358,6 +358,16 @@ GOLDEN: tuple[Row, ...] = (
     call("sweep_over", "fixed {L} pinned", "udl {q}", "deflection max over length", OVER, "EI {EI}"),
     call("sweep_over", "{end} {L} pinned", "G: udl {q}", "moment min", OVER, None, "{g} G"),
     call("sweep_over", "fixed {L} pinned", "udl {q}", "moment max", [["L"], [8.0]]),
+    # solving for an unknown
+    call("solve_for", "pinned ? roller", "udl 12", "moment max", 96.5),
+    call("solve_for", "pinned 6.3 roller", "udl 8", "deflection max over length", 0.0025, "?"),
+    call("solve_for", [["pinned"], ["?"], ["roller"]], "Q: udl 12", "moment max", 96.5, None, "1.5 Q"),
+    call("solve_for", "pinned ? roller", "udl 12", "deflection max", 0.02, 24000.0, None, 2.0),
+    call("solve_for", "pinned ? roller", "udl 12", "moment max", 96.5, None, None, None, 20.0),
+    call("solve_for", "pinned 6 roller", "point 40 at ?", "moment max", 50.0, None, None, 0.1, None, "largest"),
+    call("solve_for", "pinned 6 roller", "point 40 at ?", "moment max", 61.0),
+    call("solve_for", "pinned 6 roller", "udl 12", "moment max", 54.0),
+    call("solve_for", "pinned ? roller", "udl 12", "moment max", "much"),
     # text
     call("beam_line", "fix", 6.5, "pin"),
     call("beam_line", "fix", 6.5, "pin", 2.75, "hinge 1.25 roller"),

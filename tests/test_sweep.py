@@ -50,16 +50,14 @@ CANCELLING = 1e-12
 
 
 def miss_of(result: Result, phrase: str, beam: Beam) -> float:
-    """What an error of a result is measured by: the peak of its field, or where that is rounding, what loads could do.
+    """What an error of a result is measured by: the peak of its field, or a part of what its loads could raise.
 
-    A field that is zero but for rounding has a peak far below what its loads would raise if they were resisted.
+    That part counts where loads next to a support, or loads that cancel, leave a field next to nothing.
     """
-    asked = read_phrase(phrase)
     field = field_of(phrase)
     resisted = float(beam.restrained[field])
-    return (resisted if rounding(result, field, beam) else result.fields.peak(FIELDS.index(field))) / asked.scale(
-        result.beam
-    )
+    least = resisted if rounding(result, field, beam) else 1e-4 * resisted
+    return max(result.fields.peak(FIELDS.index(field)), least) / read_phrase(phrase).scale(result.beam)
 
 
 def field_of(phrase: str) -> str:
