@@ -77,7 +77,19 @@ def test_arguments_stand_in_one_order_everywhere() -> None:
     """Beam, loads, what is asked, combinations, points, stiffness, combination, and which extreme."""
     order = ["beam", "loads", "support", "phrase", "x", "span", "combinations", "points", "stiffness", "combination"]
     order.append("side")
-    of_its_own = {"part", "from_unit", "to_unit", "standard", "actions", "leading", "factors"}
+    of_its_own = {
+        "part",
+        "from_unit",
+        "to_unit",
+        "standard",
+        "actions",
+        "leading",
+        "factors",
+        "target",
+        "low",
+        "high",
+        "which",
+    }
     for entry in catalogue().values():
         names = [a.name for a in entry.arguments]
         assert set(names) <= {*order, *of_its_own}

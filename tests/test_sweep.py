@@ -91,7 +91,10 @@ def altered(text: str, chance: random.Random, wrong: float) -> str:
 def rows_like(beam: Beam, count: int, chance: random.Random) -> Iterator[Cells]:
     """Rows of the topology of a beam; among them faulty ones, mechanisms, and ones of a stiffness that is not given."""
     for _ in range(count):
-        line, loads, stiffness, combination = (altered(text, chance, 0.02) for text in beam.cells)
+        line, loads, stiffness = (altered(text, chance, 0.02) for text in beam.cells[:3])
+        combination = altered(beam.combination, chance, 0.0)
+        if combination and chance.random() < 0.04:
+            combination = chance.choice(["1e400 G", "2,5 G", "G + G", "1.35/1 G", "six G"])
         stiff: object = stiffness
         if chance.random() < 0.04:
             line = line.replace("pinned", "hinge", 1) if chance.random() < 0.5 else line.replace("fixed", "free", 1)
