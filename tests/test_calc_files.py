@@ -293,6 +293,21 @@ def test_the_commands(tmp_path: Path) -> None:
     assert run("build", "-o", tmp_path / "nowhere" / "beamfuncs.oxt")[0] == 2
 
 
+def test_workbooks_that_the_other_commands_do_not_take(tmp_path: Path) -> None:
+    """One line says what to do with a workbook that has the office's long names, with an .ods, and with no file."""
+    saved, ods, missing = as_calc_writes(tmp_path / "saved.xlsx"), tmp_path / "saved.ods", tmp_path / "missing.xlsx"
+    with zipfile.ZipFile(ods, "w") as archive:
+        archive.writestr("mimetype", "application/vnd.oasis.opendocument.spreadsheet")
+    long = f"it has Calc's long function names: run `beamfuncs calc plain {saved}` first"
+    for book, why in (saved, long), (ods, "it is an .ods: save it as .xlsx, or use `beamfuncs calc freeze`"):
+        for command, told in ("fill", f"beamfuncs: {book}: {why}"), ("check", f"{book}: cannot be read: {why}"):
+            result = CliRunner().invoke(app, [command, str(book)])
+            assert (result.exit_code, result.output) == (2, told + "\n")
+    assert sorted(tmp_path.iterdir()) == [ods, saved]
+    assert run("plain", missing) == (2, f"beamfuncs: {missing}: there is no such file\n")
+    assert run("freeze", missing) == (2, f"beamfuncs: {missing}: there is no such file\n")
+
+
 def run(*words: object) -> tuple[int, str]:
     """The exit status and the words of a command of `beamfuncs calc`."""
     result = CliRunner().invoke(app, ["calc", *map(str, words)])

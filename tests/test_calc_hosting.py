@@ -8,7 +8,7 @@ import subprocess
 import sys
 import threading
 import time
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from importlib.metadata import version
 from pathlib import Path
 
@@ -127,7 +127,10 @@ def test_install_check_uninstall(folder: Path, tmp_path: Path, monkeypatch: pyte
     assert status == 1
     assert "BAD  extension: not installed" in told
     assert "BAD  function server: " in told
-    assert "run `beamfuncs calc install`" in told
+    assert told.count(f"run `beamfuncs calc install --profile {profile}`") == told.count("calc install") == 3
+    with monkeypatch.context() as patch:
+        patch.setattr(offices, "profile", lambda: profile)
+        assert run("check")[1].count("run `beamfuncs calc install`") == 3
     assert run("install", "--profile", str(profile))[0] == 0
     status, told = run("check", "--profile", str(profile))
     assert status == 0, told
@@ -144,6 +147,59 @@ def test_install_check_uninstall(folder: Path, tmp_path: Path, monkeypatch: pyte
     assert installing.installed(profile) is None
     assert run("uninstall", "--profile", str(profile)) == (0, f"there was nothing in {profile}\n")
     assert places.running() is None
+
+
+@pytest.fixture
+def taking(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Callable[[str], None]:
+    """An office without its programs, in whose place a script is run each time its extensions change."""
+    if sys.platform == "win32":
+        pytest.skip("not run: there is no shell for the script")
+    monkeypatch.setenv(FOLDER, str(tmp_path / "server"))
+    monkeypatch.setattr(installing, "_is_root", lambda: False)
+    monkeypatch.setattr(offices, "_programs", lambda: iter([tmp_path]))
+    monkeypatch.setattr(offices, "profile", lambda: tmp_path / "own")
+    there = version("beamfuncs")
+    monkeypatch.setattr(installing, "installed", lambda profile: there if (profile / "there").exists() else None)
+    (tmp_path / "soffice").touch()
+    script = tmp_path / "unopkg"
+    script.touch(0o755)
+    profile = """for one in "$@"; do case $one in -env:*) profile=${one#*//};; esac; done"""
+
+    def take(words: str) -> None:
+        script.write_text(f"#!/bin/sh\n{profile}\n{words}\n")
+
+    return take
+
+
+TAKEN = 'mkdir -p "$profile"; if [ $1 = add ]; then touch "$profile/there"; else rm "$profile/there"; fi'
+BREAKS_OFF = "echo 'ERROR: (com.sun.star.deployment.DeploymentException) {' >&2; echo '}' >&2; exit 1"
+
+
+def test_one_of_several_profiles(tmp_path: Path, taking: Callable[[str], None]) -> None:
+    """How the server is started stays known as long as a profile has the extension, the user's own or another."""
+    taking(TAKEN)
+    own, first, second = (tmp_path / name for name in ("own", "first", "second"))
+    for profile in (first, own, second):
+        assert run("install", "--profile", str(profile))[0] == 0
+    command = places.command()
+    for profile in (first, own):
+        assert run("uninstall", "--profile", str(profile))[0] == 0
+        assert places.command() == command
+    assert run("uninstall", "--profile", str(second))[0] == 0
+    assert not places.settings().exists()
+
+
+def test_an_install_that_breaks_off(tmp_path: Path, taking: Callable[[str], None]) -> None:
+    """It is tried once more; then it is said in words, nothing being installed."""
+    tries = tmp_path / "tries"
+    taking(f"echo >>{tries}; if [ $(wc -l <{tries}) = 1 ]; then {BREAKS_OFF}; fi; {TAKEN}")
+    assert run("install", "--profile", str(tmp_path / "first"))[0] == 0
+    taking(f"echo >>{tries}; {BREAKS_OFF}")
+    told = run("install", "--profile", str(tmp_path / "second"))
+    assert told == (2, "beamfuncs: not installed: run it again\n")
+    assert len(tries.read_text()) == 4
+    taking("echo >&2; echo 'no room' >&2; exit 1")
+    assert run("install", "--profile", str(tmp_path / "second")) == (2, f"beamfuncs: {tmp_path / 'unopkg'}: no room\n")
 
 
 def test_the_offices_own_tool_takes_the_extension(tmp_path: Path) -> None:

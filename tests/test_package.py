@@ -75,6 +75,11 @@ def _protected(path: Path) -> None:
 
 def _other_zip(path: Path) -> None:
     with zipfile.ZipFile(path, "w") as archive:
+        archive.writestr("readme.txt", "drawings")
+
+
+def _ods(path: Path) -> None:
+    with zipfile.ZipFile(path, "w") as archive:
         archive.writestr("mimetype", "application/vnd.oasis.opendocument.spreadsheet")
 
 
@@ -116,6 +121,7 @@ def _binary(path: Path) -> None:
         (_older, "older binary format"),
         (_protected, "password"),
         (_other_zip, "no workbook"),
+        (_ods, "an .ods"),
         (_cut_short, "damaged"),
         (_flipped, "damaged"),
         (_broken_xml, "XML is damaged"),

@@ -16,6 +16,8 @@ from beamfuncs.hosts.calc.component.beamfuncs_client.messages import Failed
 QUESTION = ("reaction", ["fixed 8 pinned", "udl 12", 1.0])
 """What the server is asked; by statics and Bernoulli's beam 5/8 of the load, 60."""
 
+INSTALL = "beamfuncs calc install"
+
 
 @dataclass(frozen=True)
 class Finding:
@@ -35,8 +37,10 @@ def findings(office: offices.Office | None, profile: Path) -> Iterator[Finding]:
     """Look at one thing after the other."""
     yield Finding("beamfuncs", f"{version('beamfuncs')}, Python {platform.python_version()}, {platform.platform()}")
     yield from _of_office(office)
-    yield _of_extension(profile)
-    yield _of_server()
+    own = profile.absolute() == offices.profile().absolute()
+    install = INSTALL if own else f"{INSTALL} --profile {_quoted(profile)}"
+    yield _of_extension(profile, install)
+    yield _of_server(install)
     yield Finding("logs", f"{places.log()}, {places.log().with_name('office.log')}")
 
 
@@ -53,22 +57,27 @@ def _of_office(office: offices.Office | None) -> Iterator[Finding]:
         yield Finding("its Python", str(office.python))
 
 
-def _of_extension(profile: Path) -> Finding:
+def _of_extension(profile: Path, install: str) -> Finding:
     found, wanted = installing.installed(profile), version("beamfuncs")
     if found is None:
-        return Finding("extension", f"not installed in {profile}", "run `beamfuncs calc install`")
+        return Finding("extension", f"not installed in {profile}", f"run `{install}`")
     if found != wanted:
-        remedy = "run `beamfuncs calc install`, then restart LibreOffice"
+        remedy = f"run `{install}`, then restart LibreOffice"
         return Finding("extension", f"{found}, but the package is {wanted}, in {profile}", remedy)
     return Finding("extension", f"{found}, in {profile}")
 
 
-def _of_server() -> Finding:
+def _of_server(install: str) -> Finding:
     functions = Functions(version("beamfuncs"))
     try:
         answer = functions.call(*QUESTION)
     except Failed as failed:
-        return Finding("function server", failed.reason, "run `beamfuncs calc install`; the logs may tell more")
+        reason = failed.reason.replace(f"`{INSTALL}`", f"`{install}`")  # which does not know of profiles
+        return Finding("function server", reason, f"run `{install}`; the logs may tell more")
     finally:
         functions.close()
     return Finding("function server", f"answers {answer:g} to reaction of {QUESTION[1]}; the right answer is 60")
+
+
+def _quoted(path: Path) -> str:
+    return f'"{path}"' if " " in str(path) else str(path)

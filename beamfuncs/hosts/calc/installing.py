@@ -17,6 +17,8 @@ from beamfuncs.hosts.server import starting_command
 
 PATIENCE = 300
 """Seconds that the office may take."""
+_BROKEN_OFF = "DeploymentException"
+"""How the office names a change of its extensions that it broke off."""
 _VERSION = re.compile(r'<version value="([^"]*)"')
 
 
@@ -35,7 +37,7 @@ def install(office: Office, profile: Path) -> None:
         _change(office, profile, "add", str(file))
     if installed(profile) != version("beamfuncs"):
         raise NotInstalled(f"the office took the extension, but it is not in {profile}")
-    places.keep_command(starting_command())
+    places.keep_command(starting_command(), [str(profile.absolute()), *_others(profile)])
 
 
 def uninstall(office: Office, profile: Path) -> bool:
@@ -45,7 +47,10 @@ def uninstall(office: Office, profile: Path) -> bool:
     there = installed(profile) is not None
     if there:
         _change(office, profile, "remove", EXTENSION)
-    places.forget_command()
+    if others := _others(profile):
+        places.keep_command(places.command(), others)
+    else:
+        places.forget_command()
     control.stop()
     return there
 
@@ -67,6 +72,12 @@ def installed(profile: Path) -> str | None:
     return None
 
 
+def _others(profile: Path) -> list[str]:
+    """Return the other profiles that have the extension, as far as they are known: the user's own, and those noted."""
+    known = {str(offices.profile().absolute()), *places.profiles()} - {str(profile.absolute())}
+    return sorted(other for other in known if installed(Path(other)) is not None)
+
+
 def _change(office: Office, profile: Path, action: str, extension: str) -> None:
     if offices.lock(profile).exists():
         raise NotInstalled(f"LibreOffice is open: close it first (or, if it crashed, delete {offices.lock(profile)})")
@@ -79,13 +90,22 @@ def _change(office: Office, profile: Path, action: str, extension: str) -> None:
         options = ["--suppress-license", "--force"] if action == "add" else []
         where = f"-env:UserInstallation={profile.as_uri()}"
         command = [str(office.unopkg), action, *options, where, extension]
+    failure = _failure(command)
+    if _BROKEN_OFF in failure:  # which may be for that once
+        failure = _failure(command)
+    if _BROKEN_OFF in failure:
+        raise NotInstalled(f"not {'installed' if action == 'add' else 'taken out'}: run it again")
+    if failure:
+        raise NotInstalled(f"{command[0]}: {failure.splitlines()[-1].strip()}")
+
+
+def _failure(command: list[str]) -> str:
+    """Run a program; return what it said where it failed, a blank text where it did not."""
     try:
         done = subprocess.run(command, capture_output=True, text=True, check=False, timeout=PATIENCE)
     except (OSError, subprocess.TimeoutExpired) as error:
-        raise NotInstalled(f"{command[0]}: {error}") from None
-    if done.returncode:
-        said = [line.strip() for line in (done.stderr or done.stdout).splitlines() if line.strip()]
-        raise NotInstalled(f"{command[0]}: {said[-1] if said else f'status {done.returncode}'}")
+        return str(error)
+    return (done.stderr or done.stdout).strip() or f"status {done.returncode}" if done.returncode else ""
 
 
 def _is_root() -> bool:

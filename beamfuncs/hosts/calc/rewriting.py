@@ -51,6 +51,8 @@ def freeze(book: Path, out: Path | None = None) -> tuple[Path, int]:
 
 def _rewritten(book: Path, target: Path, changed: Callable[[Archive], Mapping[str, bytes]]) -> int:
     """Write a workbook with other contents of some of its parts; return of how many."""
+    if not book.is_file():
+        raise NotRewritten(f"{book}: {'is a folder' if book.is_dir() else 'there is no such file'}")
     try:
         archive = Archive(book.read_bytes())
         contents = changed(archive)

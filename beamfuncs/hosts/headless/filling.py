@@ -12,6 +12,7 @@ from pathlib import Path
 from typing import NamedTuple, TypeVar
 
 from beamfuncs.errors import VALUE, ErrorValue
+from beamfuncs.hosts.calc.naming import SERVICE
 from beamfuncs.hosts.excel_addin.places import ADDIN
 from beamfuncs.hosts.headless.archive import MOST_BYTES
 from beamfuncs.hosts.headless.bounds import why_refused
@@ -354,6 +355,9 @@ class Filling:
         texts = {cell.formula for cell in self._cells.values() if cell.formula}
         names = self.package.parts[self.package.workbook_part].decode(errors="replace")
         named = set().union(called(names), *map(called, texts)) - {name.casefold() for name in self._functions}
+        if any(name.startswith(f"{SERVICE}.".casefold()) for name in named):
+            book = self.package.path
+            raise NotFilled(f"{book}: it has Calc's long function names: run `beamfuncs calc plain {book}` first")
         return unknown_functions(sorted(name for name in named - {"single"} if not name.startswith("_xlpm.")))
 
     def _refuse_what_is_hidden(self) -> None:

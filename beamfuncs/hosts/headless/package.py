@@ -24,6 +24,7 @@ from beamfuncs.hosts.headless.markup import Encoding, decoded, plain, tree, writ
 OLD_BINARY = b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1"
 ENCRYPTED = "EncryptedPackage".encode("utf-16-le")
 ZIP = b"PK"
+OPEN_DOCUMENT = b"application/vnd.oasis.opendocument.spreadsheet"
 CONTENT_TYPES = "[Content_Types].xml"
 _COMPUTED = {"worksheet", "sharedStrings", "styles"}
 """The kinds of parts that a workbook is evaluated from."""
@@ -89,6 +90,8 @@ class Package:
         if not data.startswith(ZIP):
             raise NotAWorkbook(_instead(data))
         parts = Parts(Archive(data))
+        if OPEN_DOCUMENT in parts.get("mimetype", b""):
+            raise NotAWorkbook("it is an .ods: save it as .xlsx, or use `beamfuncs calc freeze`")
         try:
             return cls(path, parts, *_contents(parts))
         except KeyError as error:

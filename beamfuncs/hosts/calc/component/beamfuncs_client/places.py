@@ -142,10 +142,17 @@ def command() -> list[str]:
     return [str(word) for word in words]
 
 
-def keep_command(words: list[str]) -> None:
-    """Write the command that starts the server, for the hosts of this user."""
+def profiles() -> list[str]:
+    """Return the profiles of the office that `beamfuncs calc install` put the extension into."""
+    found = _read(settings())
+    folders = found.get("profiles") if isinstance(found, dict) else None
+    return [str(folder) for folder in folders] if isinstance(folders, list) else []
+
+
+def keep_command(words: list[str], profiles: list[str] | None = None) -> None:
+    """Write the command that starts the server, for the hosts of this user, and the office's profiles that need it."""
     settings().parent.mkdir(mode=0o700, parents=True, exist_ok=True)
-    _write(settings(), {"server": words})
+    _write(settings(), {"server": words, "profiles": profiles or []})
 
 
 def forget_command() -> None:
