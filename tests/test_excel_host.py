@@ -266,7 +266,9 @@ def test_a_number_of_lower_and_higher_rank_is_the_same_number() -> None:
 def test_a_reference_of_several_areas_is_refused(entry: Entry, profile: Path) -> None:
     """`(A1:A2,C1)` is no rectangle: reading its first area alone would be a silent loss."""
     for position in range(len(entry.arguments)):
-        arguments: list[object] = ["fixed 8 pinned", "udl 12", 1.0, 24000.0, "G", "lowest"][: len(entry.arguments)]
+        arguments: list[object] = ["fixed 8 pinned", "udl 12", 1.0, 24000.0, "G", "lowest", None, None, None][
+            : len(entry.arguments)
+        ]
         arguments[position] = cells([["fixed"], [8.0], ["pinned"]], areas=2)
         shown = call(entry.name, *arguments)
         if entry.name == "fault" and position < 4:
