@@ -683,7 +683,7 @@ def sweep(
     Notes
     -----
     Loads, stiffness and combination are one for all beams, or columns with a cell for each. Beams of one topology are
-    solved together: numbers agree with those of the other functions within 1e-13 of the peak of the field, 1e-12 where
+    solved together: numbers agree with those of the other functions within 4e-13 of the peak of the field, 4e-12 where
     settlements, rotations and curvatures raise forces that cancel. In Python, `beamfuncs.batch.sweep` gives an array.
 
     Examples
