@@ -10,7 +10,7 @@ cell's polynomial or of one of its edges, or a corner.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from functools import lru_cache
 from itertools import pairwise
 from math import factorial
@@ -25,8 +25,9 @@ from beamfuncs.errors import impossible
 from beamfuncs.fields import DEFLECTION, LEFT, MOMENT, RIGHT, SHEAR, SLOPE, derivative, roots
 from beamfuncs.influence import Section, influence_lines
 from beamfuncs.loads import Factors
+from beamfuncs.parts import Piece
 from beamfuncs.stiffness import Array
-from beamfuncs.trains import shifted
+from beamfuncs.trains import crossings, shifted
 
 if TYPE_CHECKING:
     from beamfuncs.adverse import Adverse
@@ -64,12 +65,20 @@ def place(
     end: float,
 ) -> tuple[float, str]:
     """Return the place, and the side of it, at which `sign` times a field is largest between two marks."""
+    pieces = list(adverse.along(which, start, end).pieces(columns, sign))
     if len(trains) > 1 or any(train.lane for train in adverse.loads.trains):
-        return _searched(adverse, which, columns, trains, sign, start, end)
+
+        def value(x: float, side: str) -> float:
+            return sign * adverse.extreme(Section(which, x, side), columns, trains, sign).value
+
+        def prepare(places: Sequence[tuple[float, str]]) -> None:
+            adverse.prepare([Section(which, x, side) for x, side in places])
+
+        return _searched(pieces, value, prepare)
     beam, (train,), (factors,) = adverse.beam, adverse.loads.trains, trains
     lines = _Lines(beam, which)
     cells = []
-    for e, a, b, along in _along(adverse, which, columns, sign, start, end):
+    for e, a, b, along in _along(adverse.beam, pieces):
         cells.append(Cell(e, [(a, 0.0), (b, 0.0)], _with(along)))  # the train is not there
         for factor in set(factors) - {0.0}:
             for offsets in train.offsets:
@@ -83,12 +92,9 @@ def place(
     return beam.x[cell.element] + (s if s > left + beam.near else left), RIGHT
 
 
-def _along(
-    adverse: Adverse, which: int, columns: Sequence[Factors], sign: int, start: float, end: float
-) -> Iterator[tuple[int, float, float, Array]]:
+def _along(beam: Beam, pieces: Sequence[Piece]) -> Iterator[tuple[int, float, float, Array]]:
     """Yield the element, the two ends in it, and the polynomial of the loads that do not move, piece by piece."""
-    beam = adverse.beam
-    for x, length, polynomial in adverse.along(which, start, end).pieces(columns, sign):
+    for x, length, polynomial in pieces:
         e = beam.length_at(x + length / 2)
         left = x - beam.x[e]
         moved = Polynomial(polynomial)(Polynomial([-left, 1.0]))
@@ -129,10 +135,8 @@ def _cells(lines: _Lines, e: int, a: float, b: float, along: Array, forces: Arra
     """Yield the cells of a piece of an element, the train being somewhere on the beam."""
     beam, table = lines.beam, lines.of(e)
     x = np.array(beam.x)
-    positions = np.unique(x[:, None] - offsets)
-    positions = positions[np.concatenate([[True], np.diff(positions) > beam.near])]
     starts = np.concatenate([[0.0], x])
-    for p0, p1 in pairwise(positions.tolist()):
+    for p0, p1 in pairwise(crossings(x, offsets).tolist()):
         at = np.searchsorted(x, (p0 + p1) / 2 + offsets)  # 0 before the beam, elements + 1 beyond it
         cubics = shifted(table[:, at], (p0 + offsets - starts[at])[:, None]) * forces[:, None, None]
         inside = offsets[at == e + 1] - x[e]  # an axle is to the left of the place where s - p exceeds this
@@ -293,13 +297,9 @@ def _lattice(degree: int) -> tuple[Array, Array]:
 
 
 def _searched(
-    adverse: Adverse,
-    which: int,
-    columns: Sequence[Factors],
-    trains: Sequence[Factors],
-    sign: int,
-    start: float,
-    end: float,
+    pieces: Sequence[Piece],
+    value: Callable[[float, str], float],
+    prepare: Callable[[Sequence[tuple[float, str]]], None],
 ) -> tuple[float, str]:
     """Return the place of the largest value found by trying many places and closing in on the best.
 
@@ -307,14 +307,11 @@ def _searched(
     """
     from scipy.optimize import minimize_scalar
 
-    def value(x: float, side: str) -> float:
-        return sign * adverse.extreme(Section(which, x, side), columns, trains, sign).value
-
     tried: list[tuple[float, float, str, float, float]] = []
-    for x, length, _ in adverse.along(which, start, end).pieces(columns, sign):
+    for x, length, _ in pieces:
         inner = length * (1.0 - np.cos(np.pi * np.arange(1, NODES) / NODES)) / 2
         places = [(x, RIGHT), *((x + s, RIGHT) for s in inner.tolist()), (x + length, LEFT)]
-        adverse.prepare([Section(which, at, side) for at, side in places])
+        prepare(places)
         values = [value(at, side) for at, side in places]
         for n, ((at, side), found) in enumerate(zip(places, values, strict=True)):
             before, after = max(n - 1, 0), min(n + 1, len(places) - 1)

@@ -31,11 +31,12 @@ CACHED = 20_480
 _EXAMPLE = "e.g. 'fixed 8 pinned'"
 _BEAM_WORD = re.compile(r"spring\s*\([^()]*\)|\S+", re.IGNORECASE)
 _SPRING = re.compile(r"spring\s*\((.*)\)", re.IGNORECASE | re.DOTALL)
-_CASE = r"[^\W\d_]\w*"
-_CASE_PREFIX = re.compile(rf"\s*({_CASE})\s*:(.*)", re.DOTALL)
+CASE = r"[^\W\d_]\w*"
+"""The name of a load case."""
+_CASE_PREFIX = re.compile(rf"\s*({CASE})\s*:(.*)", re.DOTALL)
 _CLAUSE_END = re.compile(r"[;\n\r\v\f\x85\u2028\u2029]")
 _TERM = re.compile(
-    rf"\s*(?P<sign>[+-]?)\s*(?:(?P<factor>{NUMBER})(?:\s*/\s*(?P<favourable>{NUMBER}))?\s*\*?)?\s*(?P<case>{_CASE})?"
+    rf"\s*(?P<sign>[+-]?)\s*(?:(?P<factor>{NUMBER})(?:\s*/\s*(?P<favourable>{NUMBER}))?\s*\*?)?\s*(?P<case>{CASE})?"
 )
 
 
@@ -500,7 +501,7 @@ def _table_clause(where: str, row: tuple[Cell, ...], header: dict[int, str]) -> 
         raise unreadable(f"{where}: no load; its first word is one of {', '.join(LOAD_KINDS)}")
     if cells.get("size") is None:
         raise unreadable(f"{where}: no size; write 0 for none")
-    if case is not None and not (isinstance(case, str) and re.fullmatch(_CASE, case.strip())):
+    if case is not None and not (isinstance(case, str) and re.fullmatch(CASE, case.strip())):
         raise unreadable(f"{where}: case {quoted(case)}; a case is a letter and then letters, digits or _")
     parts = {
         name: read(f"{where}, {word}", cells[word])

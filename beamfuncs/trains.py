@@ -72,14 +72,20 @@ def sums(line: InfluenceLine, offsets: Array, axles: Array) -> tuple[Array, Arra
     The cubics count from the left one of the two.
     """
     x = np.array(line.x)
-    breaks = np.unique(x[:, None] - offsets)
-    breaks = breaks[np.concatenate([[True], np.diff(breaks) > NEAR * x[-1]])]
+    breaks = crossings(x, offsets)
     middles = (breaks[:-1] + breaks[1:]) / 2
     piece = np.searchsorted(x, middles[:, None] + offsets)  # 0 before the beam, len(x) beyond it
     starts = np.concatenate([[0.0], x])[piece]
     cubics = axles[:, None] * line.coefficients[piece]
     outside = (piece == 0) | (piece == len(x))
     return breaks, shifted(cubics, breaks[:-1, None] + offsets - starts).sum(axis=1), outside
+
+
+def crossings(x: Array, offsets: Array) -> Array:
+    """Return the positions of the first axle at which an axle stands at one of the places, those that are one once."""
+    positions = np.unique(x[:, None] - offsets)
+    apart: Array = positions[np.concatenate([[True], np.diff(positions) > NEAR * x[-1]])]
+    return apart
 
 
 def shifted(cubics: Array, by: Array) -> Array:

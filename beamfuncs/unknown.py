@@ -43,7 +43,7 @@ def solve_unknown(
     which: str,
 ) -> float:
     """Return the smallest or the largest number in a range that brings the result of a phrase to a target."""
-    marks = sum(str(cell).count(MARK) for value in given for cell in flat(value) if isinstance(cell, str))
+    marks = sum(cell.count(MARK) for value in given for cell in flat(value) if isinstance(cell, str))
     if marks != 1:
         raise unreadable(
             f"solve_for: {marks} question marks in beam, loads and stiffness; write one in the place of one number,"
@@ -56,7 +56,7 @@ def solve_unknown(
     def result(value: float) -> float:
         return _answer(given, combination, phrase, value)
 
-    found = list(_roots(result, target, _scan(low, high)))
+    found = _roots(result, target, _scan(low, high))
     if not found:
         raise absent(
             f"solve_for: no number from {low:g} to {high:g} brings the result to {target:g}; it is"

@@ -11,6 +11,7 @@ from typing import TypeAlias
 
 from beamfuncs.cells import Cell, Frozen, as_text, decimal_comma, is_number, number
 from beamfuncs.errors import BeamError, impossible, quoted, unreadable
+from beamfuncs.notation import CASE
 
 MOST_ACTIONS = 100
 EXAMPLE = "write e.g. 'G permanent; Q office; S snow; W wind'"
@@ -18,8 +19,7 @@ PSI = ("psi0", "psi1", "psi2")
 HEADERS = ("case", "action", *PSI)
 """The columns of a table of actions, in the order that they have without a header row."""
 
-_CASE = r"[^\W\d_]\w*"
-_SIGNED = rf"-?\s*{_CASE}"
+_SIGNED = rf"-?\s*{CASE}"
 _CASES = rf"{_SIGNED}(?:\s*(?:\+|\bor\b)\s*{_SIGNED})*"
 _CLAUSE = re.compile(rf"({_CASES})(?: ?:| |$)(.*)", re.IGNORECASE)
 
